@@ -1,0 +1,25 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * smoothing.h: smoothing kernels with compact support H, W(r, H) = f(r/H) / H^D.
+ *
+ * Wendland C2 and C4 (Wendland 1995; forms in Dehnen & Aly 2012, arXiv:1204.2471, table 1) and the
+ * cubic spline (Monaghan & Lattanzio 1985). Wendland kernels do not pair at any neighbour number. */
+#ifndef WEND_KERNELS_SMOOTHING_H
+#define WEND_KERNELS_SMOOTHING_H
+
+/** One smoothing kernel: a row of the table. */
+typedef struct wend_smoothing {
+  const char *name; /**< "wendland-c2", "wendland-c4", "cubic-spline" */
+  double norm[2];   /**< factor of the shape in 2-D and 3-D, so that W integrates to one */
+  /** Shape s(q): f = norm s. n values; q >= 0 in, s out, exactly 0 for q >= 1. No overlap. */
+  void (*shape)(int n, const double *restrict q, double *restrict s);
+  /** Derivative ds/dq of the same. */
+  void (*slope)(int n, const double *restrict q, double *restrict ds);
+} wend_smoothing;
+
+/** Finds a smoothing kernel by name; NULL where there is none of that name. Local. */
+const wend_smoothing *wend_smoothing_find(const char *name);
+
+/** The k-th smoothing kernel, k = 0, 1, ...; NULL beyond the last. Local. */
+const wend_smoothing *wend_smoothing_at(int k);
+
+#endif

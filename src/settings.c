@@ -1,0 +1,25 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * settings.c: the defaults of the numerical choices. */
+#include "settings.h"
+
+wend_settings wend_settings_default(void) {
+  return (wend_settings){
+      .smoothing = "wendland-c2",
+      .neighbours = 0,
+      .closure = 2e-3,
+      .sweeps = 32,
+      .close_faces = true,
+      .fix_volumes = true,
+      .angle_power = 4,
+      .angle_share = 0.6,
+      .limited = true,
+      .isotropic_unmagnetised = true,
+      .supertime = "rkg2",
+      .stages = 21,
+      .margin = 0.95,
+      .tolerance = 1e-4,
+      .first_step = 0,
+      .fixed_step = 0,
+      .local_bounds = false,
+  };
+}
