@@ -1,0 +1,132 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * operator.c: pair coefficients of diffusion along and across the field. */
+#include "operator.h"
+
+static double dot(const double *a, const double *b) {
+  return a[0] * b[0] + a[1] * b[1] + a[2] * b[2];
+}
+
+static void entry_vectors(const wend_faces *f, int64_t k, double area[3], double arm[3]) {
+  for (int d = 0; d < 3; d++) {
+    area[d] = f->area[d][k];
+    arm[d] = f->arm[d][k];
+  }
+}
+
+/* a_ij and s_ij of one entry; every product and sum is even under the exchange of the ends. */
+static void low_order(const wend_operator_source *s, const double *area, const double *arm,
+                      int32_t i, int32_t j, float *full, float *kept) {
+  const double r2 = dot(arm, arm);
+  if (!(r2 > 0)) {
+    *full = *kept = 0;
+    return;
+  }
+  const double *bi = s->field[i], *bj = s->field[j];
+  const double ri = dot(bi, arm), rj = dot(bj, arm);
+  const double excess = ((s->kappa[i][0] - s->kappa[i][1]) + (s->kappa[j][0] - s->kappa[j][1])) / 2;
+  const double across = (s->kappa[i][1] + s->kappa[j][1]) / 2;
+  const double along = excess * (dot(area, bi) * ri + dot(area, bj) * rj) / (2 * r2);
+  const double isotropic = across * dot(area, arm) / r2;
+  const double cos2 = (ri * ri + rj * rj) / (2 * r2);
+  const double a = fmax(0, along + isotropic);
+  const double share = s->angle_share * pow(cos2, s->angle_power);
+  *full = (float)a;
+  *kept = (float)fmin(a, fmax(0, share * along + isotropic));
+}
+
+void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
+                             const wend_operator_source *source, const wend_faces *faces,
+                             const wend_operator_low *low, double *restrict sum_full,
+                             double *restrict sum_both) {
+  for (int32_t t = 0; t < slices.n; t++) {
+    const int32_t slice = slices.list[t];
+    double full[WEND_LANES] = {0}, both[WEND_LANES] = {0};
+    const int lanes = wend_pairs_lanes(pairs, slice);
+    for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
+      const int lane = (int)(k % WEND_LANES);
+      const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
+      double area[3], arm[3];
+      entry_vectors(faces, k, area, arm);
+      low_order(source, area, arm, i, pairs->index[k], &low->full[k], &low->kept[k]);
+      full[lane] += low->full[k];
+      both[lane] += (double)low->full[k] + low->kept[k];
+    }
+    for (int lane = 0; lane < lanes; lane++) {
+      sum_full[slice * WEND_LANES + lane] = full[lane];
+      sum_both[slice * WEND_LANES + lane] = both[lane];
+    }
+  }
+}
+
+/* c_ij = M_i^-1 r_ij w_ij of one entry: zero beyond the row's own support. */
+static void gradient_weight(const wend_face_source *s, const double *arm, int32_t i, double c[3]) {
+  const double h = s->place[i][3], *m = s->inverse[i];
+  const double q = sqrt(dot(arm, arm)) / h;
+  double w;
+  s->smoothing->shape(1, &q, &w);
+  w *= s->smoothing->norm[s->domain->dim - 2] / (s->domain->dim == 2 ? h * h : h * h * h);
+  c[0] = w * (m[0] * arm[0] + m[1] * arm[1] + m[2] * arm[2]);
+  c[1] = w * (m[1] * arm[0] + m[3] * arm[1] + m[4] * arm[2]);
+  c[2] = w * (m[2] * arm[0] + m[4] * arm[1] + m[5] * arm[2]);
+}
+
+void wend_operator_high_along(const wend_pairs *pairs, wend_slices slices,
+                              const wend_operator_source *source, const wend_faces *faces,
+                              const wend_operator_along *along) {
+  for (int32_t t = 0; t < slices.n; t++) {
+    const int32_t slice = slices.list[t];
+    const int lanes = wend_pairs_lanes(pairs, slice);
+    for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
+      const int lane = (int)(k % WEND_LANES);
+      const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
+      double area[3], arm[3], c[3];
+      entry_vectors(faces, k, area, arm);
+      gradient_weight(&source->face, arm, i, c);
+      along->slope[k] = (float)dot(source->field[i], c);
+      along->alpha[k] = (float)(dot(area, source->field[i]) / 2);
+      along->beta[k] = (float)(dot(area, source->field[pairs->index[k]]) / 2);
+    }
+  }
+}
+
+void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
+                            const wend_operator_source *source, const wend_faces *faces,
+                            float *const gradient[3]) {
+  for (int32_t t = 0; t < slices.n; t++) {
+    const int32_t slice = slices.list[t];
+    const int lanes = wend_pairs_lanes(pairs, slice);
+    for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
+      const int lane = (int)(k % WEND_LANES);
+      const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
+      double area[3], arm[3], c[3];
+      entry_vectors(faces, k, area, arm);
+      gradient_weight(&source->face, arm, i, c);
+      for (int d = 0; d < 3; d++) gradient[d][k] = (float)c[d];
+    }
+  }
+}
+
+static double escape_rate(const wend_operator_source *s, int32_t i, const double *m) {
+  const wend_domain *domain = s->face.domain;
+  const double m2 = dot(m, m);
+  if (!(m2 > 0)) return 0;
+  const double width = domain->dim == 2 ? sqrt(s->face.volume[i] / domain->thickness)
+                                        : cbrt(s->face.volume[i]);
+  const double mb = dot(m, s->field[i]);
+  return (s->kappa[i][0] * mb * mb + s->kappa[i][1] * (m2 - mb * mb)) / (sqrt(m2) * width / 2);
+}
+
+void wend_operator_escape(const wend_pairs *pairs, wend_slices slices,
+                          const wend_operator_source *source, const wend_faces *faces,
+                          const unsigned char *restrict surface, double *restrict rate) {
+  for (int32_t t = 0; t < slices.n; t++)
+    for (int lane = 0; lane < wend_pairs_lanes(pairs, slices.list[t]); lane++) {
+      const int32_t i = slices.list[t] * WEND_LANES + lane;
+      double missing[3] = {0};
+      for (int32_t m = 0; surface[i] && m < pairs->count[i]; m++)
+        for (int d = 0; d < 3; d++)
+          if (source->face.domain->open[d])
+            missing[d] -= faces->area[d][wend_pairs_entry(pairs, i, m)];
+      rate[i] = escape_rate(source, i, missing);
+    }
+}

@@ -1,0 +1,64 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * operator.h: pair coefficients of diffusion along and across the field.
+ *
+ * With K = kappa_par b b + kappa_perp (1 - b b):
+ *   high order   Q_i = -K_i grad e,  f_ij = A_ij.(Q_i + Q_j)/2          linearly exact
+ *   low order    a_ij (e_i - e_j),  a_ij = max(0, a^b + a^o)            monotone, smearing
+ *     a^b = k_ij [(A.b_i)(b_i.r) + (A.b_j)(b_j.r)] / (2 r^2),  k_ij = mean of (kappa_par - kappa_perp)
+ *     a^o = (mean kappa_perp) A.r / r^2
+ *   kept         s_ij = min(a_ij, max(0, phi (c^2)^p a^b + a^o)),  c^2 = [(b_i.r)^2 + (b_j.r)^2] / (2 r^2)
+ *
+ * Pairs that lie across the field, which do the smearing, lose nearly all of their low-order part; pairs
+ * along it keep the damping. Where kappa_perp = 0 everywhere one scalar a particle, q = -kappa_par g, is
+ * enough: f_ij = alpha_ij q_i + beta_ij q_j with alpha_ij = A_ij.b_i/2, beta_ij = A_ij.b_j/2. */
+#ifndef WEND_KERNELS_OPERATOR_H
+#define WEND_KERNELS_OPERATOR_H
+
+#include "faces.h"
+
+/** Per-particle inputs beside those of the faces; owned particles, then ghosts. */
+typedef struct wend_operator_source {
+  wend_face_source face;
+  const double (*field)[3]; /**< unit field b; zero where B = 0 */
+  const double (*kappa)[2]; /**< kappa_par, kappa_perp; equal where B = 0 */
+  double angle_power;       /**< p >= 0 */
+  double angle_share;       /**< phi in [0, 1] */
+} wend_operator_source;
+
+/** Low-order pair coefficients, [entries] each; zero on padding. */
+typedef struct wend_operator_low {
+  float *full; /**< a_ij */
+  float *kept; /**< s_ij */
+} wend_operator_low;
+
+/** Coefficients of the along-field form, [entries] each; zero on padding. */
+typedef struct wend_operator_along {
+  float *slope; /**< d_ij: g_i = sum_j d_ij (e_j - e_i) */
+  float *alpha; /**< A_ij.b_i / 2 */
+  float *beta;  /**< A_ij.b_j / 2 */
+} wend_operator_along;
+
+/** Computes a_ij and s_ij, and [rows] sum_j a_ij and sum_j (a_ij + s_ij). Local, no overlap. */
+void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
+                             const wend_operator_source *source, const wend_faces *faces,
+                             const wend_operator_low *low, double *restrict sum_full,
+                             double *restrict sum_both);
+
+/** Computes slope, alpha and beta. Local, no overlap. */
+void wend_operator_high_along(const wend_pairs *pairs, wend_slices slices,
+                              const wend_operator_source *source, const wend_faces *faces,
+                              const wend_operator_along *along);
+
+/** Computes the three components of c_ij (grad e = sum_j c_ij (e_j - e_i)), [entries] each. */
+void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
+                            const wend_operator_source *source, const wend_faces *faces,
+                            float *const gradient[3]);
+
+/** Escape rate [rows] through the missing area m_i = -sum_j A_ij of surface particles: the energy that leaves a
+ *  time is rate e_i, rate = [kappa_par (m.b)^2 + kappa_perp (|m|^2 - (m.b)^2)] / (|m| d), with d half the
+ *  particle's width. Components of m along axes that are not open pass nothing. */
+void wend_operator_escape(const wend_pairs *pairs, wend_slices slices,
+                          const wend_operator_source *source, const wend_faces *faces,
+                          const unsigned char *restrict surface, double *restrict rate);
+
+#endif
