@@ -10,7 +10,8 @@
 typedef struct wend_smoothing {
   const char *name; /**< "wendland-c2", "wendland-c4", "cubic-spline" */
   double norm[2];   /**< factor of the shape in 2-D and 3-D, so that W integrates to one */
-  /** Shape s(q): f = norm s. n values; q >= 0 in, s out, exactly 0 for q >= 1. No overlap. */
+  /** Shape s(q): f = norm s. n values; finite q >= 0 in, s out, exactly 0 for q >= 1. No
+   *  overlap. */
   void (*shape)(int n, const double *restrict q, double *restrict s);
   /** Derivative ds/dq of the same. */
   void (*slope)(int n, const double *restrict q, double *restrict ds);

@@ -20,9 +20,11 @@ typedef struct wend_stage {
 typedef struct wend_supertime {
   const char *name; /**< "rkg2", "rkl2", "euler" */
   int least;        /**< fewest stages: 3 (odd numbers only), 1 for Euler */
+  int most;         /**< most stages: WEND_STAGES_MOST, 1 for Euler */
   /** Stable super-step over the forward-Euler limit, for s stages. */
   double (*reach)(int s);
-  /** Fills stage[1..s] (stage[0] is not used); stage[1].mt is `first`. s odd, least <= s <= MOST. */
+  /** Fills stage[1..s] (stage[0] is not used); stage[1].mt is `first`. s odd, least <= s <= most;
+   *  even s >= 2 is defined as well, but not damped at the stability limit. */
   void (*stages)(int s, wend_stage *stage);
 } wend_supertime;
 
@@ -30,7 +32,7 @@ typedef struct wend_supertime {
 const wend_supertime *wend_supertime_find(const char *name);
 /** The k-th family; NULL beyond the last. Local. */
 const wend_supertime *wend_supertime_at(int k);
-/** The smallest odd s whose reach is at least `ratio`; 0 where even WEND_STAGES_MOST falls short. */
+/** The smallest odd s whose reach is at least `ratio`; 0 where even the most stages fall short, or ratio is NaN. */
 int wend_supertime_fit(const wend_supertime *family, double ratio);
 
 #endif
