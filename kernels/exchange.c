@@ -82,10 +82,10 @@ static void ratios(const wend_pairs *p, int32_t slice, const balance *b, const d
 }
 
 void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
-                                const wend_operator_along *along, const float *restrict kept,
-                                const double *restrict sum_full, const double (*restrict state)[2],
-                                double *restrict antidiffusive, double (*restrict ratio)[2]) {
-  const float *restrict alpha = along->alpha, *restrict beta = along->beta;
+                                const float *restrict alpha, const float *restrict beta,
+                                const float *restrict kept, const double *restrict sum_full,
+                                const double (*restrict state)[2], double *restrict antidiffusive,
+                                double (*restrict ratio)[2]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     lanes own, q;

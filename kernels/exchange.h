@@ -14,7 +14,6 @@
 #ifndef WEND_KERNELS_EXCHANGE_H
 #define WEND_KERNELS_EXCHANGE_H
 
-#include "operator.h"
 #include "pairs.h"
 
 /** Pass 1 along the field: state [n][2] = e, q; reads e of all, writes q of the rows.
@@ -31,9 +30,10 @@ void wend_exchange_flux_full(const wend_pairs *pairs, wend_slices slices,
 /** Pass 2 along the field: writes the antidiffusive part [entries] and ratio [rows][2] = R+, R-.
  *  sum_full [rows] is sum_j a_ij. Local, no overlap. */
 void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
-                                const wend_operator_along *along, const float *restrict kept,
-                                const double *restrict sum_full, const double (*restrict state)[2],
-                                double *restrict antidiffusive, double (*restrict ratio)[2]);
+                                const float *restrict alpha, const float *restrict beta,
+                                const float *restrict kept, const double *restrict sum_full,
+                                const double (*restrict state)[2], double *restrict antidiffusive,
+                                double (*restrict ratio)[2]);
 
 /** Pass 2 in full. */
 void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,

@@ -6,11 +6,8 @@ static double dot(const double *a, const double *b) {
   return a[0] * b[0] + a[1] * b[1] + a[2] * b[2];
 }
 
-static void entry_vectors(const wend_faces *f, int64_t k, double area[3], double arm[3]) {
-  for (int d = 0; d < 3; d++) {
-    area[d] = f->area[d][k];
-    arm[d] = f->arm[d][k];
-  }
+static void entry_vector(float *const column[3], int64_t k, double vector[3]) {
+  for (int d = 0; d < 3; d++) vector[d] = column[d][k];
 }
 
 /* a_ij and s_ij of one entry; every product and sum is even under the exchange of the ends. */
@@ -36,7 +33,7 @@ static void low_order(const wend_operator_source *s, const double *area, const d
 
 void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
                              const wend_operator_source *source, const wend_faces *faces,
-                             const wend_operator_low *low, double *restrict sum_full,
+                             float *restrict kept, double *restrict sum_full,
                              double *restrict sum_both) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
@@ -46,10 +43,12 @@ void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
       const int lane = (int)(k % WEND_LANES);
       const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
       double area[3], arm[3];
-      entry_vectors(faces, k, area, arm);
-      low_order(source, area, arm, i, pairs->index[k], &low->full[k], &low->kept[k]);
-      full[lane] += low->full[k];
-      both[lane] += (double)low->full[k] + low->kept[k];
+      entry_vector(faces->area, k, area);
+      entry_vector(faces->arm, k, arm);
+      float a;
+      low_order(source, area, arm, i, pairs->index[k], &a, &kept[k]);
+      full[lane] += a;
+      both[lane] += (double)a + kept[k];
     }
     for (int lane = 0; lane < lanes; lane++) {
       sum_full[slice * WEND_LANES + lane] = full[lane];
@@ -70,27 +69,42 @@ static void gradient_weight(const wend_face_source *s, const double *arm, int32_
   c[2] = w * (m[2] * arm[0] + m[4] * arm[1] + m[5] * arm[2]);
 }
 
-void wend_operator_high_along(const wend_pairs *pairs, wend_slices slices,
-                              const wend_operator_source *source, const wend_faces *faces,
-                              const wend_operator_along *along) {
+void wend_operator_slope(const wend_pairs *pairs, wend_slices slices,
+                         const wend_operator_source *source, float *const arm[3],
+                         float *restrict slope) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     const int lanes = wend_pairs_lanes(pairs, slice);
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
       const int lane = (int)(k % WEND_LANES);
       const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
-      double area[3], arm[3], c[3];
-      entry_vectors(faces, k, area, arm);
-      gradient_weight(&source->face, arm, i, c);
-      along->slope[k] = (float)dot(source->field[i], c);
-      along->alpha[k] = (float)(dot(area, source->field[i]) / 2);
-      along->beta[k] = (float)(dot(area, source->field[pairs->index[k]]) / 2);
+      double r[3], c[3];
+      entry_vector(arm, k, r);
+      gradient_weight(&source->face, r, i, c);
+      slope[k] = (float)dot(source->field[i], c);
+    }
+  }
+}
+
+void wend_operator_along(const wend_pairs *pairs, wend_slices slices,
+                         const double (*restrict field)[3], float *const area[3],
+                         float *restrict alpha, float *restrict beta) {
+  for (int32_t t = 0; t < slices.n; t++) {
+    const int32_t slice = slices.list[t];
+    const int lanes = wend_pairs_lanes(pairs, slice);
+    for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
+      const int lane = (int)(k % WEND_LANES);
+      const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
+      double a[3];
+      entry_vector(area, k, a);
+      alpha[k] = (float)(dot(a, field[i]) / 2);
+      beta[k] = (float)(dot(a, field[pairs->index[k]]) / 2);
     }
   }
 }
 
 void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
-                            const wend_operator_source *source, const wend_faces *faces,
+                            const wend_operator_source *source, float *const arm[3],
                             float *const gradient[3]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
@@ -98,9 +112,9 @@ void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
       const int lane = (int)(k % WEND_LANES);
       const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
-      double area[3], arm[3], c[3];
-      entry_vectors(faces, k, area, arm);
-      gradient_weight(&source->face, arm, i, c);
+      double r[3], c[3];
+      entry_vector(arm, k, r);
+      gradient_weight(&source->face, r, i, c);
       for (int d = 0; d < 3; d++) gradient[d][k] = (float)c[d];
     }
   }

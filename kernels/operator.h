@@ -25,33 +25,25 @@ typedef struct wend_operator_source {
   double angle_share;       /**< phi in [0, 1] */
 } wend_operator_source;
 
-/** Low-order pair coefficients, [entries] each; zero on padding. */
-typedef struct wend_operator_low {
-  float *full; /**< a_ij */
-  float *kept; /**< s_ij */
-} wend_operator_low;
-
-/** Coefficients of the along-field form, [entries] each; zero on padding. */
-typedef struct wend_operator_along {
-  float *slope; /**< d_ij: g_i = sum_j d_ij (e_j - e_i) */
-  float *alpha; /**< A_ij.b_i / 2 */
-  float *beta;  /**< A_ij.b_j / 2 */
-} wend_operator_along;
-
-/** Computes a_ij and s_ij, and [rows] sum_j a_ij and sum_j (a_ij + s_ij). Local, no overlap. */
+/** Computes s_ij [entries], and [rows] sum_j a_ij and sum_j (a_ij + s_ij). Local, no overlap. */
 void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
                              const wend_operator_source *source, const wend_faces *faces,
-                             const wend_operator_low *low, double *restrict sum_full,
+                             float *restrict kept, double *restrict sum_full,
                              double *restrict sum_both);
 
-/** Computes slope, alpha and beta. Local, no overlap. */
-void wend_operator_high_along(const wend_pairs *pairs, wend_slices slices,
-                              const wend_operator_source *source, const wend_faces *faces,
-                              const wend_operator_along *along);
+/** Computes d_ij [entries], g_i = sum_j d_ij (e_j - e_i), from the arms. Local, no overlap. */
+void wend_operator_slope(const wend_pairs *pairs, wend_slices slices,
+                         const wend_operator_source *source, float *const arm[3],
+                         float *restrict slope);
+
+/** Computes alpha_ij = A_ij.b_i/2 and beta_ij = A_ij.b_j/2 [entries]. Local, no overlap. */
+void wend_operator_along(const wend_pairs *pairs, wend_slices slices,
+                         const double (*restrict field)[3], float *const area[3],
+                         float *restrict alpha, float *restrict beta);
 
 /** Computes the three components of c_ij (grad e = sum_j c_ij (e_j - e_i)), [entries] each. */
 void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
-                            const wend_operator_source *source, const wend_faces *faces,
+                            const wend_operator_source *source, float *const arm[3],
                             float *const gradient[3]);
 
 /** Escape rate [rows] through the missing area m_i = -sum_j A_ij of surface particles: the energy that leaves a
