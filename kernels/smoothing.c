@@ -89,7 +89,6 @@ const wend_smoothing *wend_smoothing_at(int k) {
 const wend_smoothing *wend_smoothing_find(const char *name) {
   const wend_smoothing *kernel = NULL;
   for (int k = 0; (kernel = wend_smoothing_at(k)) != NULL; k++)
-    if (strcmp(kernel->name, name) == 0)
-      return kernel;
+    if (strcmp(kernel->name, name) == 0) return kernel;
   return NULL;
 }

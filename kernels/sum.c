@@ -58,15 +58,13 @@ static inline void add_one(int64_t *limb, double term) {
 void wend_sum_add(wend_sum *sum, int64_t n, const double *term, int64_t stride) {
   for (int64_t begin = 0; begin < n; begin += TERMS_PER_CARRY) {
     const int64_t end = n - begin < TERMS_PER_CARRY ? n : begin + TERMS_PER_CARRY;
-    for (int64_t i = begin; i < end; i++)
-      add_one(sum->limb, term[i * stride]);
+    for (int64_t i = begin; i < end; i++) add_one(sum->limb, term[i * stride]);
     wend_sum_normalise(sum);
   }
 }
 
 void wend_sum_merge(wend_sum *sum, const wend_sum *other) {
-  for (int k = 0; k < WEND_SUM_LIMBS; k++)
-    sum->limb[k] += other->limb[k];
+  for (int k = 0; k < WEND_SUM_LIMBS; k++) sum->limb[k] += other->limb[k];
   wend_sum_normalise(sum);
 }
 
@@ -78,33 +76,27 @@ static double round_positive(const int64_t *limb, int top) {
   const uint64_t next = top > 0 ? (uint64_t)limb[top - 1] : 0;
   const uint64_t third = top > 1 ? (uint64_t)limb[top - 2] : 0;
   int lead = 0;
-  while ((uint64_t)limb[top] << lead >> (DIGIT_BITS - 1) == 0)
-    lead++;
+  while ((uint64_t)limb[top] << lead >> (DIGIT_BITS - 1) == 0) lead++;
   const uint64_t high = ((uint64_t)limb[top] << DIGIT_BITS | next) << lead;
   const uint64_t low = third << lead;
   uint64_t sticky = low & (uint64_t)DIGIT_MASK;
-  for (int k = 0; k < top - 2; k++)
-    sticky |= (uint64_t)limb[k];
+  for (int k = 0; k < top - 2; k++) sticky |= (uint64_t)limb[k];
   const uint64_t window = high | low >> DIGIT_BITS | (sticky != 0);
   return ldexp((double)window, DIGIT_BITS * (top - 1) - lead + LEAST_EXPONENT);
 }
 
 double wend_sum_value(const wend_sum *sum) {
-  if (sum->limb[FLAG] != 0)
-    return (double)NAN;
+  if (sum->limb[FLAG] != 0) return (double)NAN;
   wend_sum size = *sum;
   wend_sum_normalise(&size);
   const int negative = size.limb[DIGITS - 1] < 0;
   if (negative) {
-    for (int k = 0; k < DIGITS; k++)
-      size.limb[k] = -size.limb[k];
+    for (int k = 0; k < DIGITS; k++) size.limb[k] = -size.limb[k];
     wend_sum_normalise(&size);
   }
   int top = DIGITS - 1;
-  while (top >= 0 && size.limb[top] == 0)
-    top--;
-  if (top < 0)
-    return 0.0;
+  while (top >= 0 && size.limb[top] == 0) top--;
+  if (top < 0) return 0.0;
   const double value = round_positive(size.limb, top);
   return negative ? -value : value;
 }

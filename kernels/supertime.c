@@ -20,8 +20,7 @@ static double reach_rkg2(int s) { return (s + 4.0) * (s - 1.0) / 6.0; }
 /* b_0 = 1 and b_1 = 1/3 are free choices that make a_0 = a_1 = 0. */
 static double gegenbauer_b(int s) {
   const double j = s;
-  if (s < 2)
-    return s == 0 ? 1.0 : 1.0 / 3.0;
+  if (s < 2) return s == 0 ? 1.0 : 1.0 / 3.0;
   return 4.0 * (j - 1.0) * (j + 4.0) / (3.0 * j * (j + 1.0) * (j + 2.0) * (j + 3.0));
 }
 
@@ -85,14 +84,12 @@ const wend_supertime *wend_supertime_at(int k) {
 const wend_supertime *wend_supertime_find(const char *name) {
   const wend_supertime *family = NULL;
   for (int k = 0; (family = wend_supertime_at(k)) != NULL; k++)
-    if (strcmp(family->name, name) == 0)
-      return family;
+    if (strcmp(family->name, name) == 0) return family;
   return NULL;
 }
 
 int wend_supertime_fit(const wend_supertime *family, double ratio) {
   for (int s = family->least; s <= family->most; s += 2)
-    if (family->reach(s) >= ratio)
-      return s;
+    if (family->reach(s) >= ratio) return s;
   return 0;
 }
