@@ -12,8 +12,9 @@
 typedef struct wend_command {
   const char *name;
   const char *help; /**< what it does, in one line */
-  /** Runs it. Collective. argv[0] is the subcommand's name. Returns a wend_status or WEND_USAGE, the same
-   *  on every rank, with the reason in team->text. Prints results on rank 0, and no error. */
+  /** Runs it. Collective. argv[0] is the subcommand's name. Returns a wend_status or
+   * WEND_USAGE, the same on every rank, with the reason in team->text. Prints results on rank
+   * 0, and no error. */
   int (*run)(wend_team *team, int argc, char **argv);
 } wend_command;
 
@@ -22,7 +23,8 @@ const wend_command *wend_command_find(const char *name);
 /** The k-th subcommand; NULL beyond the last. Local. */
 const wend_command *wend_command_at(int k);
 
-/** Writes down how a subcommand was called wrongly; returns WEND_USAGE. Local: every rank calls it. */
+/** Writes down how a subcommand was called wrongly; returns WEND_USAGE. Local: every rank calls
+ * it. */
 int wend_command_usage(wend_team *team, const char *format, ...)
     __attribute__((format(printf, 2, 3)));
 

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
- * main.c: the `wend` program: starts MPI, picks the subcommand, turns its status into an exit status.
+ * main.c: the `wend` program: starts MPI, picks the subcommand, turns its status into an exit
+ * status.
  *
  * 0: done; 1: failed; 2: called wrongly. An error is one line on stderr, from rank 0 alone. */
 #include "command.h"
