@@ -9,6 +9,7 @@
 
 wend_status wend_team_init(wend_team *team, MPI_Comm comm) {
   memset(team, 0, sizeof *team);
+  team->allocate = calloc;
   if (MPI_Comm_dup(comm, &team->comm) != MPI_SUCCESS) return WEND_ERR_MPI;
   MPI_Comm_set_errhandler(team->comm, MPI_ERRORS_RETURN);
   MPI_Comm_rank(team->comm, &team->rank);
@@ -42,10 +43,11 @@ wend_status wend_agree(wend_team *team) {
   return (wend_status)pending[1];
 }
 
+enum { AT_ONCE = 32 }; /* values a reduction carries; more go in several */
+
 /* MPI_MAX and MPI_MIN leave NaN undefined, so a NaN travels as a flag beside the values. */
-static void reduce(wend_team *team, int n, double *value, MPI_Op op, double neutral) {
-  enum { MOST = 32 };
-  double mine[2 * MOST], all[2 * MOST];
+static void reduce_some(wend_team *team, int n, double *value, MPI_Op op, double neutral) {
+  double mine[2 * AT_ONCE] = {0}, all[2 * AT_ONCE] = {0};
   const double flag = op == MPI_MAX ? 1 : -1;
   for (int k = 0; k < n; k++) {
     mine[k] = isnan(value[k]) ? neutral : value[k];
@@ -54,6 +56,11 @@ static void reduce(wend_team *team, int n, double *value, MPI_Op op, double neut
   if (MPI_Allreduce(mine, all, 2 * n, MPI_DOUBLE, op, team->comm) != MPI_SUCCESS)
     wend_fail(team, WEND_ERR_MPI, "a reduction over ranks failed");
   for (int k = 0; k < n; k++) value[k] = all[n + k] != 0 ? NAN : all[k];
+}
+
+static void reduce(wend_team *team, int n, double *value, MPI_Op op, double neutral) {
+  for (int k = 0; k < n; k += AT_ONCE)
+    reduce_some(team, n - k < AT_ONCE ? n - k : AT_ONCE, value + k, op, neutral);
 }
 
 void wend_team_max(wend_team *team, int n, double *value) {
@@ -71,7 +78,8 @@ void wend_team_count(wend_team *team, int n, int64_t *value) {
 
 void *wend_allocate(wend_team *team, int64_t n, size_t size) {
   if (n <= 0) return NULL;
-  void *memory = calloc((size_t)n, size);
+  void *memory =
+      team->allocate != NULL ? team->allocate((size_t)n, size) : calloc((size_t)n, size);
   if (memory == NULL)
     wend_fail(team, WEND_ERR_MEMORY, "rank %d could not get %.3g MB of memory: use more ranks",
               team->rank, (double)n * (double)size / 1e6);

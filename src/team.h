@@ -17,6 +17,7 @@ typedef struct wend_team {
   int rank, size;
   wend_status status;          /**< first failure of this rank since the last agreement */
   char text[WEND_TEXT_LENGTH]; /**< what went wrong, where, and what to do */
+  void *(*allocate)(size_t n, size_t size); /**< calloc, unless a test replaces it */
 } wend_team;
 
 /** Duplicates the communicator, with errors returned. Collective. */
