@@ -2,7 +2,8 @@
  * halo.h: one layer of ghosts, and the exchange of their fields.
  *
  * A ghost is a particle of another rank with r_ij < max(H_i, H_j) for some owned i. Fields are
- * stored owned first, then ghosts grouped by source rank in ascending rank, canonical order within. */
+ * stored owned first, then ghosts grouped by source rank in ascending rank, canonical order
+ * within. */
 #ifndef WEND_SRC_HALO_H
 #define WEND_SRC_HALO_H
 
@@ -25,27 +26,30 @@ typedef struct wend_halo {
 
 /** Finds the ghosts of owned particles. Collective.
  *
- *  place [owned][4]: x, y, z, H of this rank's particles in canonical order. The result may hold more
- *  ghosts than pairs need (boxes are used); wend_halo_trim drops the rest. Owned particles must keep their
- *  order while the halo lives; the decomposition may be any (a rank may be empty, or own everything). */
+ *  place [owned][4]: x, y, z, H of this rank's particles in canonical order. The result may
+ * hold more ghosts than pairs need (boxes are used); wend_halo_trim drops the rest. Owned
+ * particles must keep their order while the halo lives; the decomposition may be any (a rank
+ * may be empty, or own everything). */
 wend_status wend_halo_build(wend_team *team, const wend_domain *domain, int32_t owned,
                             const double (*place)[4], wend_halo *halo);
 
 /** Keeps only the ghosts with used[g] true, g in [0, ghosts), on both sides. Collective.
  *  renumber [ghosts] receives the new ghost number of each kept ghost, -1 of a dropped one. */
-wend_status wend_halo_trim(wend_team *team, wend_halo *halo, const bool *used, int32_t *renumber);
+wend_status wend_halo_trim(wend_team *team, wend_halo *halo, const bool *used,
+                           int32_t *renumber);
 
-/** Starts to fill the ghosts of a field: item i is `width` consecutive values at field + i * stride *
- *  size, `size` bytes each value (8 for double and uint64_t, 4 for float and int32_t), items
- *  [0, owned) are read at once and may change after the call, items [owned, owned + ghosts) are written by
- *  the time `end` returns. One exchange at a time. Collective among peers. */
-wend_status wend_halo_begin(wend_team *team, wend_halo *halo, void *field, int stride, int width,
-                            int size);
+/** Starts to fill the ghosts of a field: item i is `width` consecutive values at field + i *
+ * stride * size, `size` bytes each value (8 for double and uint64_t, 4 for float and int32_t),
+ * items [0, owned) are read at once and may change after the call, items [owned, owned +
+ * ghosts) are written by the time `end` returns. One exchange at a time. Collective among
+ * peers. */
+wend_status wend_halo_begin(wend_team *team, wend_halo *halo, void *field, int stride,
+                            int width, int size);
 /** Waits for the exchange under way. */
 wend_status wend_halo_end(wend_team *team, wend_halo *halo);
 /** begin and end in one. */
-wend_status wend_halo_exchange(wend_team *team, wend_halo *halo, void *field, int stride, int width,
-                               int size);
+wend_status wend_halo_exchange(wend_team *team, wend_halo *halo, void *field, int stride,
+                               int width, int size);
 
 /** Frees the halo and zeroes the struct. Local. */
 void wend_halo_reset(wend_halo *halo);
