@@ -1,0 +1,154 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * transport_init.c: builds the transport operator on a geometry. */
+#include "operator.h"
+#include "transport.h"
+#include <inttypes.h>
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+static double value_of(const wend_particles *p, wend_column column, int32_t i) {
+  return p->column[column] != NULL ? p->column[column][i] : 0;
+}
+
+/* Unit field, and the coefficients along and across it; where B = 0 both are the isotropic mean of a
+ * tangled field, (kappa_par + 2 kappa_perp)/3, or nothing. */
+static void magnetise(wend_team *team, const wend_settings *settings, const wend_particles *p,
+                      wend_transport *t) {
+  for (int32_t i = 0; i < p->n; i++) {
+    double b[3], b2 = 0;
+    for (int a = 0; a < 3; a++) {
+      b[a] = value_of(p, WEND_BX + a, i);
+      b2 = fmax(b2, fabs(b[a]));
+    }
+    const double largest = b2 > 0 ? b2 : 1;
+    double length = 0;
+    for (int a = 0; a < 3; a++) length += (b[a] / largest) * (b[a] / largest);
+    length = sqrt(length);
+    for (int a = 0; a < 3; a++) t->field[i][a] = b2 > 0 ? b[a] / largest / length : 0;
+    const double par = value_of(p, WEND_KPAR, i), perp = value_of(p, WEND_KPERP, i);
+    if (!(par >= 0) || !(perp >= 0) || isinf(par) || isinf(perp) || !isfinite(length))
+      wend_fail(team, WEND_ERR_PARTICLES,
+                "particle %" PRIu64 ": kappa_par %g, kappa_perp %g, B (%g, %g, %g): coefficients "
+                "must be finite and not negative, and the field finite",
+                p->id[i], par, perp, b[0], b[1], b[2]);
+    const double mean = settings->isotropic_unmagnetised ? (par + 2 * perp) / 3 : 0;
+    t->kappa[i][0] = b2 > 0 ? par : mean;
+    t->kappa[i][1] = b2 > 0 ? perp : mean;
+  }
+}
+
+static wend_status exchange_coefficients(wend_team *team, wend_transport *t) {
+  wend_halo *halo = &t->geometry->near.halo;
+  wend_status status = wend_halo_exchange(team, halo, t->field, 3, 3, sizeof(double));
+  if (status == WEND_OK)
+    status = wend_halo_exchange(team, halo, t->kappa, 2, 2, sizeof(double));
+  double across = 0;
+  for (int32_t i = 0; i < t->geometry->near.owned; i++) across = fmax(across, t->kappa[i][1]);
+  wend_team_max(team, 1, &across);
+  t->along = across == 0;
+  t->width = t->along ? 2 : 4;
+  return status;
+}
+
+static bool any_open(const wend_domain *domain) {
+  return domain->open[0] || domain->open[1] || domain->open[2];
+}
+
+/* Columns come and go in this order to keep the peak of memory low. */
+static wend_status build_pairs(wend_team *team, const wend_operator_source *source,
+                               wend_transport *t) {
+  wend_geometry *g = t->geometry;
+  const int64_t entries = wend_neighbours_entries(&g->near);
+  const wend_pairs *pairs = &g->near.pairs;
+  free(g->faces.weight);
+  g->faces.weight = NULL;
+  for (int d = 0; d < 3 && !t->along; d++) {
+    t->gradient[d] = wend_allocate(team, entries, sizeof(float));
+    if (entries > 0 && t->gradient[d] == NULL) return wend_agree(team);
+  }
+  if (t->along) t->slope = wend_allocate(team, entries, sizeof(float));
+  const wend_status status = wend_agree(team);
+  if (status != WEND_OK) return status;
+  if (t->along)
+    wend_operator_slope(pairs, g->near.all, source, g->faces.arm, t->slope);
+  else
+    wend_operator_gradient(pairs, g->near.all, source, g->faces.arm, t->gradient);
+  for (int d = 0; d < 3; d++) {
+    free(g->faces.arm[d]);
+    g->faces.arm[d] = NULL;
+  }
+  if (!t->along) return WEND_OK;
+  t->alpha = wend_allocate(team, entries, sizeof(float));
+  t->beta = wend_allocate(team, entries, sizeof(float));
+  const wend_status agreed = wend_agree(team);
+  if (agreed != WEND_OK) return agreed;
+  wend_operator_along(pairs, g->near.all, source->field, g->faces.area, t->alpha, t->beta);
+  wend_geometry_release_faces(g);
+  return WEND_OK;
+}
+
+static void limit_step(wend_team *team, wend_transport *t, const double *sum_both) {
+  double fastest = 0;
+  for (int32_t i = 0; i < t->geometry->near.owned; i++) {
+    const double out = sum_both[i] + (t->escapes ? t->escape[i] : 0);
+    fastest = fmax(fastest, out / t->geometry->volume[i]);
+  }
+  wend_team_max(team, 1, &fastest);
+  t->explicit_step = 1 / fastest;
+}
+
+static wend_status allocate(wend_team *team, wend_transport *t) {
+  const wend_neighbours *near = &t->geometry->near;
+  t->kept = wend_allocate(team, wend_neighbours_entries(near), sizeof *t->kept);
+  t->sum_full = wend_allocate(team, near->owned, sizeof *t->sum_full);
+  t->kappa_along = wend_allocate(team, near->owned, sizeof *t->kappa_along);
+  if (t->escapes) t->escape = wend_allocate(team, near->owned, sizeof *t->escape);
+  return wend_agree(team);
+}
+
+static wend_status allocate_state(wend_team *team, wend_transport *t) {
+  const wend_neighbours *near = &t->geometry->near;
+  t->antidiffusive =
+      wend_allocate(team, wend_neighbours_entries(near), sizeof *t->antidiffusive);
+  t->state = wend_allocate(team, (int64_t)near->local * t->width, sizeof *t->state);
+  t->ratio = wend_allocate(team, near->local, sizeof *t->ratio);
+  return wend_agree(team);
+}
+
+wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
+                                const wend_particles *particles, wend_geometry *geometry,
+                                wend_transport *transport) {
+  wend_status status = WEND_OK;
+  wend_transport *t = transport;
+  double *sum_both = NULL;
+  const wend_neighbours *near = &geometry->near;
+  *t = (wend_transport){.geometry = geometry, .limited = settings->limited};
+  t->escapes = any_open(&geometry->domain);
+  t->field = wend_allocate(team, near->local, sizeof *t->field);
+  t->kappa = wend_allocate(team, near->local, sizeof *t->kappa);
+  sum_both = wend_allocate(team, near->owned, sizeof *sum_both);
+  WEND_TRY(wend_agree(team));
+  magnetise(team, settings, particles, t);
+  WEND_TRY(wend_agree(team));
+  WEND_TRY(exchange_coefficients(team, t));
+  const wend_operator_source source = {.face = wend_geometry_source(geometry),
+                                       .field = (const double(*)[3])t->field,
+                                       .kappa = (const double(*)[2])t->kappa,
+                                       .angle_power = settings->angle_power,
+                                       .angle_share = settings->angle_share};
+  WEND_TRY(allocate(team, t));
+  for (int32_t i = 0; i < near->owned; i++) t->kappa_along[i] = t->kappa[i][0];
+  wend_operator_low_order(&near->pairs, near->all, &source, &geometry->faces, t->kept,
+                          t->sum_full, sum_both);
+  if (t->escapes)
+    wend_operator_escape(&near->pairs, near->all, &source, &geometry->faces, geometry->surface,
+                         t->escape);
+  limit_step(team, t, sum_both);
+  WEND_TRY(build_pairs(team, &source, t));
+  WEND_TRY(allocate_state(team, t));
+done:
+  free(sum_both);
+  if (status != WEND_OK) wend_transport_reset(t);
+  return status;
+}
