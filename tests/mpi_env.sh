@@ -1,4 +1,5 @@
 # SPDX-License-Identifier: GPL-3.0-or-later
+# shellcheck shell=sh
 # mpi_env.sh: settings for MPI on one machine, sourced by tests and bootstrap: more ranks than cores,
 # no pinning (two runs would share a core), and no memory copy that containers forbid.
 export OMPI_MCA_rmaps_base_oversubscribe=1 PRTE_MCA_rmaps_default_mapping_policy=:oversubscribe
