@@ -155,6 +155,14 @@ check_symbols() {
   done
 }
 
+# libwend needs MPI and libm only.
+check_needs() {
+  local library=${builddir:-}/.libs/libwend.so
+  [ -f "$library" ] || return 0
+  objdump -p "$library" | awk '$1 == "NEEDED" && $2 !~ /^(libmpi|libm|libc|ld-)[a-z0-9-]*\.so/ {
+    print "libwend.so: needs " $2 ": MPI and libm only" }'
+}
+
 check_format() {
   local tool
   for tool in clang-format-14 clang-format; do
@@ -167,7 +175,7 @@ check_format() {
 }
 
 strip_comments
-breaches=$(check_layers; check_words; check_files; check_symbols; check_format)
+breaches=$(check_layers; check_words; check_files; check_symbols; check_needs; check_format)
 if [ -n "$breaches" ]; then
   echo "$breaches"
   exit 1
