@@ -33,16 +33,27 @@ static inline uint32_t parity_above(uint32_t x) {
   return x ^ x >> 16;
 }
 
+static inline uint32_t mask_of(uint32_t x, int bit) { return 0 - (x >> bit & 1); }
+
+static void turn_first(int bit, uint32_t *restrict x0) {
+  const uint32_t finer = (UINT32_C(1) << bit) - 1;
+  for (int k = 0; k < BATCH; k++) x0[k] ^= mask_of(x0[k], bit) & finer;
+}
+
+static void turn_other(int bit, uint32_t *restrict x0, uint32_t *restrict xa) {
+  const uint32_t finer = (UINT32_C(1) << bit) - 1;
+  for (int k = 0; k < BATCH; k++) {
+    const uint32_t invert = mask_of(xa[k], bit);
+    const uint32_t swap = (x0[k] ^ xa[k]) & ~invert & finer;
+    xa[k] ^= swap;
+    x0[k] ^= swap | (invert & finer);
+  }
+}
+
 static void undo_turns(int dim, int bits, uint32_t x[3][BATCH]) {
   for (int bit = bits - 1; bit > 0; bit--) {
-    const uint32_t finer = (UINT32_C(1) << bit) - 1;
-    for (int axis = 0; axis < dim; axis++)
-      for (int k = 0; k < BATCH; k++) {
-        const uint32_t invert = 0 - (x[axis][k] >> bit & 1);
-        const uint32_t swap = (x[0][k] ^ x[axis][k]) & ~invert & finer;
-        x[axis][k] ^= swap;
-        x[0][k] ^= axis == 0 ? invert & finer : swap | (invert & finer);
-      }
+    turn_first(bit, x[0]);
+    for (int axis = 1; axis < dim; axis++) turn_other(bit, x[0], x[axis]);
   }
 }
 
