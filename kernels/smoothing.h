@@ -1,8 +1,9 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * smoothing.h: smoothing kernels with compact support H, W(r, H) = f(r/H) / H^D.
  *
- * Wendland C2 and C4 (Wendland 1995; forms in Dehnen & Aly 2012, arXiv:1204.2471, table 1) and the
- * cubic spline (Monaghan & Lattanzio 1985). Wendland kernels do not pair at any neighbour number. */
+ * Wendland C2 and C4 (Wendland 1995; forms in Dehnen & Aly 2012, arXiv:1204.2471, table 1) and
+ * the cubic spline (Monaghan & Lattanzio 1985). Wendland kernels do not pair at any neighbour
+ * number. */
 #ifndef WEND_KERNELS_SMOOTHING_H
 #define WEND_KERNELS_SMOOTHING_H
 
