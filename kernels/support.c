@@ -11,8 +11,9 @@
 #include <stdbool.h>
 
 #define BLOCK 64 /* distances worked on at once */
-#define LANES 8  /* partial sums; a fixed number, so that any vector width gives the same bits \
-                  */
+#define LANES                                                                                  \
+  8 /* partial sums; a fixed number, so that any vector width gives the same bits              \
+     */
 #define CONVERGED 1e-7 /* last step in ln H: the error after it is about its square */
 #define STEPS 60       /* bisection alone needs 50 */
 

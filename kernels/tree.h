@@ -2,8 +2,9 @@
  * tree.h: a hierarchy of boxes over particles sorted along the Hilbert curve.
  *
  * Level 0 has one box for every WEND_LEAF consecutive particles, each further level one box for
- * every WEND_FAN boxes below it, up to a single box. A box knows its corners and the largest support
- * in it, so that one search serves supports that differ by 1000x. Boxes cost no pointers. */
+ * every WEND_FAN boxes below it, up to a single box. A box knows its corners and the largest
+ * support in it, so that one search serves supports that differ by 1000x. Boxes cost no
+ * pointers. */
 #ifndef WEND_KERNELS_TREE_H
 #define WEND_KERNELS_TREE_H
 
@@ -17,8 +18,8 @@ typedef struct wend_tree {
   int32_t n;                            /**< particles */
   int levels;                           /**< 0 where n = 0 */
   int32_t offset[WEND_TREE_LEVELS + 1]; /**< boxes of level k: [offset[k], offset[k + 1]) */
-  double (*lo)[4];                      /**< [boxes] lower corner; 4th: largest support inside */
-  double (*hi)[4];                      /**< [boxes] upper corner; 4th not used */
+  double (*lo)[4]; /**< [boxes] lower corner; 4th: largest support inside */
+  double (*hi)[4]; /**< [boxes] upper corner; 4th not used */
 } wend_tree;
 
 /** Boxes that a tree over n particles needs. Local. */
