@@ -46,22 +46,39 @@ typedef struct judgement {
   double closure, span_mean, span_rms;
 } judgement;
 
-/* Both conditions over all particles that carry them: those off free surfaces. */
+enum { MISS, EXTENT, SPAN, SPAN2, COUNT, SUMS };
+
+/* Particles whose terms are gathered before they are summed: an exact sum likes company. */
+enum { BLOCK = 256 };
+
+/* Terms of both conditions of the particles from *i on that carry them: those off free surfaces. */
+static int gather_terms(const wend_geometry *g, const work *w, int32_t *i,
+                        double term[SUMS][BLOCK]) {
+  int n = 0;
+  for (; *i < g->near.owned && n < BLOCK; ++*i) {
+    if (g->surface[*i]) continue;
+    const double *r = w->residual[*i];
+    const double off = -r[3] / (2 * g->domain.dim * g->volume[*i]);
+    term[MISS][n] = r[0] * r[0] + r[1] * r[1] + r[2] * r[2];
+    term[EXTENT][n] = w->extent[*i] * w->extent[*i];
+    term[SPAN][n] = 1 + off;
+    term[SPAN2][n] = off * off;
+    term[COUNT][n++] = 1;
+  }
+  return n;
+}
+
 static judgement judge(wend_team *team, const wend_geometry *g, work *w) {
-  enum { MISS, EXTENT, SPAN, SPAN2, COUNT, SUMS };
   wend_sum sum[SUMS];
+  double term[SUMS][BLOCK], all[SUMS];
   for (int k = 0; k < SUMS; k++) wend_sum_reset(&sum[k]);
   wend_faces_extent(&g->near.pairs, g->near.all, &g->faces, (const double(*)[4])w->unknown,
                     w->extent);
-  for (int32_t i = 0; i < g->near.owned; i++) {
-    if (g->surface[i]) continue;
-    const double *r = w->residual[i], off = -r[3] / (2 * g->domain.dim * g->volume[i]);
-    const double term[SUMS] = {r[0] * r[0] + r[1] * r[1] + r[2] * r[2],
-                               w->extent[i] * w->extent[i], 1 + off, off * off, 1};
-    for (int k = 0; k < SUMS; k++) wend_sum_add(&sum[k], 1, &term[k], 1);
+  for (int32_t i = 0; i < g->near.owned;) {
+    const int n = gather_terms(g, w, &i, term);
+    for (int k = 0; k < SUMS; k++) wend_sum_add(&sum[k], n, term[k], 1);
   }
   wend_total(team, SUMS, sum);
-  double all[SUMS];
   for (int k = 0; k < SUMS; k++) all[k] = wend_sum_value(&sum[k]);
   if (!(all[COUNT] > 0) || !(all[EXTENT] > 0)) return (judgement){0, 1, 0};
   return (judgement){sqrt(all[MISS] / all[EXTENT]), all[SPAN] / all[COUNT],

@@ -1,0 +1,102 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * control.c: length of super-steps by error estimate, stability and bounds. */
+#include "control.h"
+#include <math.h>
+
+/* Change of length from one step to the next, and how far below the tolerance it aims. */
+static const double shrink_most = 0.3, grow_most = 2, aim = 0.8;
+
+/* Order of the local error of a second-order scheme. */
+static const double local_order = 3;
+
+const char *wend_cause_text(wend_cause cause) {
+  static const char *const text[WEND_CAUSES] = {"start",  "accuracy", "stages",
+                                                "bounds", "output",   "fixed"};
+  return text[cause];
+}
+
+/* Down to a power of 2^(1/4): small noise in the estimate does not change the step. */
+static double round_down(double factor) { return exp2(floor(4 * log2(factor)) / 4); }
+
+static int fit_stages(const wend_settings *settings, const wend_supertime *family,
+                      double explicit_step, double step) {
+  const double ratio = step / (settings->margin * explicit_step);
+  return ratio <= 1 ? 1 : wend_supertime_fit(family, ratio);
+}
+
+static double longest(const wend_settings *settings, const wend_supertime *family,
+                      double explicit_step) {
+  return settings->margin * explicit_step * family->reach(settings->stages);
+}
+
+wend_control wend_control_begin(const wend_settings *settings, double explicit_step) {
+  return (wend_control){.wanted = settings->first_step > 0 ? settings->first_step
+                                                           : settings->margin * explicit_step,
+                        .cause = WEND_CAUSE_START};
+}
+
+/* The remaining time, or half of it where one step would leave a sliver. */
+static double not_beyond(double step, double remaining) {
+  if (step >= remaining * (1 - 1e-12)) return remaining;
+  return 2 * step > remaining ? remaining / 2 : step;
+}
+
+wend_plan wend_control_plan(const wend_control *control, const wend_settings *settings,
+                            const wend_supertime *family, double explicit_step,
+                            double remaining) {
+  wend_plan plan = {.step = control->wanted, .cause = control->cause};
+  if (settings->fixed_step > 0) {
+    plan.step = settings->fixed_step;
+    plan.cause = WEND_CAUSE_FIXED;
+  }
+  const double most = longest(settings, family, explicit_step);
+  if (plan.step > most) {
+    plan.step = most;
+    plan.cause = WEND_CAUSE_STAGES;
+  }
+  const double step = not_beyond(plan.step, remaining);
+  if (step < plan.step) {
+    plan.step = step;
+    plan.cause = WEND_CAUSE_OUTPUT;
+  }
+  plan.stages = fit_stages(settings, family, explicit_step, plan.step);
+  return plan;
+}
+
+bool wend_control_shorten(wend_control *control, const wend_settings *settings,
+                          const wend_supertime *family, double explicit_step, wend_plan *plan) {
+  control->redone_bounds++;
+  if (plan->stages == 1) return false;
+  plan->step = fmax(plan->step / 2, settings->margin * explicit_step);
+  plan->stages = fit_stages(settings, family, explicit_step, plan->step);
+  plan->cause = WEND_CAUSE_BOUNDS;
+  return true;
+}
+
+bool wend_control_judge(wend_control *control, const wend_settings *settings,
+                        const wend_supertime *family, double explicit_step, double error,
+                        wend_plan *plan) {
+  const bool checked = plan->stages > 1 && settings->fixed_step <= 0;
+  const double ratio = error > 0 ? settings->tolerance / error : INFINITY;
+  double factor = fmin(grow_most, fmax(shrink_most, aim * pow(ratio, 1 / local_order)));
+  factor = round_down(factor);
+  if (checked && ratio < 1) {
+    control->redone_error++;
+    plan->step = fmax(plan->step * fmin(factor, 0.5), settings->margin * explicit_step);
+    plan->stages = fit_stages(settings, family, explicit_step, plan->step);
+    plan->cause = WEND_CAUSE_ACCURACY;
+    return false;
+  }
+  control->steps[plan->cause]++;
+  if (plan->cause == WEND_CAUSE_BOUNDS) {
+    control->wanted = plan->step * fmin(factor, 1);
+    control->cause = WEND_CAUSE_BOUNDS;
+  } else if (plan->cause == WEND_CAUSE_OUTPUT || plan->cause == WEND_CAUSE_STAGES) {
+    control->wanted = fmax(fmin(control->wanted, plan->step * grow_most), plan->step * factor);
+    control->cause = WEND_CAUSE_ACCURACY;
+  } else {
+    control->wanted = plan->step * factor;
+    control->cause = WEND_CAUSE_ACCURACY;
+  }
+  return true;
+}
