@@ -5,8 +5,11 @@
  *   d_j = mu d_(j-1) + nu d_(j-2) + dt [ mt L(y_0 + d_(j-1)) + ga L(y_0) ],   j = 2..s
  *
  * RKL2: Meyer, Balsara & Aslam 2014, J. Comput. Phys. 257, 594 (Legendre).
- * RKG2: Skaras, Saxton, Meyer & Aslam 2021, J. Comput. Phys. 425, 109879 (Gegenbauer, index
- * 3/2). Euler: one stage, d_1 = dt L(y_0). */
+ *
+ * RKG2: Skaras, Saxton, Meyer & Aslam 2021, J. Comput. Phys. 425, 109879 (Gegenbauer's
+ * polynomials of index 3/2).
+ *
+ * Euler: one stage, d_1 = dt L(y_0). */
 #ifndef WEND_KERNELS_SUPERTIME_H
 #define WEND_KERNELS_SUPERTIME_H
 
@@ -23,7 +26,7 @@ typedef struct wend_supertime {
   int most;         /**< most stages: WEND_STAGES_MOST, 1 for Euler */
   /** Stable super-step over the forward-Euler limit, for s stages. */
   double (*reach)(int s);
-  /** Fills stage[1..s] (stage[0] is not used); stage[1].mt is `first`. s odd, least <= s <=
+  /** Fills stage[1..s] (stage[0] is not used); stage[1].mt is `first`. s is odd, from least to
    * most; even s >= 2 is defined as well, but not damped at the stability limit. */
   void (*stages)(int s, wend_stage *stage);
 } wend_supertime;
@@ -32,8 +35,8 @@ typedef struct wend_supertime {
 const wend_supertime *wend_supertime_find(const char *name);
 /** The k-th family; NULL beyond the last. Local. */
 const wend_supertime *wend_supertime_at(int k);
-/** The smallest odd s whose reach is at least `ratio`; 0 where even the most stages fall short,
- * or ratio is NaN. */
+/** The smallest odd s whose reach is at least `ratio`; 0 where even the most stages fall
+ * short, or ratio is NaN. Local. */
 int wend_supertime_fit(const wend_supertime *family, double ratio);
 
 #endif
