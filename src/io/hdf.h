@@ -65,6 +65,10 @@ typedef struct wend_hdf_block {
 /** The block of this rank where each has n items, in rank order. Collective. */
 wend_hdf_block wend_hdf_share(wend_team *team, hid_t type, int64_t n);
 
+/** Deals `total` items out in blocks of equal length, longer by one on the first ranks. Local.
+ */
+void wend_hdf_deal(const wend_team *team, int64_t total, int64_t *first, int64_t *n);
+
 /** Makes a contiguous data set of block.total items and writes each rank's block. Collective.
  *  *set is open for attributes until H5Dclose, -1 on failure. */
 wend_status wend_hdf_write(wend_hdf *hdf, hid_t parent, const char *name,
@@ -73,5 +77,12 @@ wend_status wend_hdf_write(wend_hdf *hdf, hid_t parent, const char *name,
 wend_status wend_hdf_read(wend_hdf *hdf, hid_t set, const wend_hdf_block *block, void *data);
 /** Items of an open one-dimensional data set; -1 where it has another rank. Matched. */
 int64_t wend_hdf_length(hid_t set);
+
+/** Checksum of n 8-byte values whose places in the whole array are first, first + 1...: the sum
+ * over values of a hash of place and bits, modulo 2^64, so that parts may be added in any
+ * order. Local. */
+uint64_t wend_hdf_checksum(const void *data, int64_t first, int64_t n);
+/** Sum of the parts of a checksum over ranks. Collective. */
+uint64_t wend_hdf_summed(wend_team *team, uint64_t part);
 
 #endif

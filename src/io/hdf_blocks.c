@@ -5,6 +5,8 @@
  * its bytes depend on the data alone. Large blocks go in several transfers, as many on every
  * rank. */
 #include "hdf.h"
+#include "machine.h"
+#include <string.h>
 
 wend_hdf_block wend_hdf_share(wend_team *team, hid_t type, int64_t n) {
   wend_hdf_block block = {.type = type, .n = n, .total = n};
@@ -14,6 +16,12 @@ wend_hdf_block wend_hdf_share(wend_team *team, hid_t type, int64_t n) {
   block.first = team->rank > 0 ? before : 0;
   wend_team_count(team, 1, &block.total);
   return block;
+}
+
+void wend_hdf_deal(const wend_team *team, int64_t total, int64_t *first, int64_t *n) {
+  const int64_t share = total / team->size, rest = total % team->size, rank = team->rank;
+  *first = rank * share + (rank < rest ? rank : rest);
+  *n = share + (rank < rest);
 }
 
 /* Transfers needed by the rank with the largest block. */
@@ -108,4 +116,21 @@ int64_t wend_hdf_length(hid_t set) {
   if (line) H5Sget_simple_extent_dims(space, &extent, NULL);
   if (space >= 0) H5Sclose(space);
   return line ? (int64_t)extent : -1;
+}
+
+uint64_t wend_hdf_checksum(const void *data, int64_t first, int64_t n) {
+  uint64_t sum = 0;
+  for (int64_t i = 0; i < n; i++) {
+    uint64_t bits;
+    memcpy(&bits, (const char *)data + (size_t)i * sizeof bits, sizeof bits);
+    sum += wend_machine_mix(bits ^ wend_machine_mix((uint64_t)(first + i)));
+  }
+  return sum;
+}
+
+uint64_t wend_hdf_summed(wend_team *team, uint64_t part) {
+  uint64_t sum = part;
+  if (MPI_Allreduce(&part, &sum, 1, MPI_UINT64_T, MPI_SUM, team->comm) != MPI_SUCCESS)
+    wend_fail(team, WEND_ERR_MPI, "ranks could not add up a checksum");
+  return sum;
 }

@@ -65,10 +65,7 @@ static void deal(wend_particle_reader *r) {
   const int64_t total = wend_record_count(r);
   r->block = (wend_hdf_block){.type = H5T_NATIVE_DOUBLE, .total = total};
   r->dim = wend_hdf_has(&r->hdf, r->gas, "position/z") ? 3 : 2;
-  const int64_t size = r->team->size, rank = r->team->rank, share = total / size,
-                rest = total % size;
-  r->block.first = rank * share + (rank < rest ? rank : rest);
-  r->block.n = share + (rank < rest);
+  wend_hdf_deal(r->team, total, &r->block.first, &r->block.n);
   if (r->block.n > INT32_MAX)
     wend_fail(r->team, WEND_ERR_ARGUMENT, "%s: %" PRId64 " particles are too many for %d ranks",
               r->hdf.path, total, r->team->size);
