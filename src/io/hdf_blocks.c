@@ -46,7 +46,7 @@ static hid_t selection(int64_t total, int64_t first, int64_t n) {
 /* Moves one piece; an empty rank takes part with a valid address. */
 static herr_t move(hid_t set, const wend_hdf_block *block, int64_t done, int64_t n,
                    hid_t transfer, void *to, const void *from) {
-  static char nothing[16];
+  char nothing[16] = {0};
   const hid_t memory = selection(n > 0 ? n : 1, 0, n);
   const hid_t file = selection(block->total, block->first + done, n);
   const size_t skip = (size_t)done * H5Tget_size(block->type);
