@@ -3,6 +3,7 @@
 #include "batch.h"
 
 #include <math.h>
+#include <string.h>
 
 /* Any distance over H at which every shape is exactly zero. */
 static const double beyond = 2.0;
@@ -17,37 +18,46 @@ void wend_batch_open(const wend_batch_source *source, int32_t slice, wend_batch 
     const double h = source->place[row][3];
     batch->row[lane] = row;
     batch->count[lane] = row == i ? p->count[i] : 0;
-    for (int a = 0; a < 4; a++) batch->own[a][lane] = source->place[row][a];
+    for (int a = 0; a < 3; a++) batch->own[a][lane] = source->place[row][a];
+    batch->inverse[lane] = 1.0 / h;
     batch->factor[lane] = norm / (dim == 2 ? h * h : h * h * h);
   }
-  for (int e = 0; e < WEND_BATCH; e++) batch->arm[2][e] = 0.0; /* and stays so in 2-D */
   batch->first = p->first[slice];
   batch->end = p->first[slice + 1];
   batch->n = 0;
 }
 
-/* x_j - x_i, entry by entry: the only part that jumps about in memory. */
+/* Places of the neighbours, component by component: the only part that jumps about in memory,
+ * kept apart because clang vectorises nothing that follows such loads directly. */
 static void gather(const wend_batch_source *source, wend_batch *b) {
   const int32_t *restrict index = source->pairs->index + b->first;
-  const int dim = source->domain->dim;
+  for (int e = 0; e < b->n; e++) {
+    const double *place = source->place[index[e]];
+    for (int a = 0; a < 3; a++) b->arm[a][e] = place[a];
+  }
+}
+
+/* Places become arms, and q = |r_ij| / H_i. The copies tell the compiler that nothing it writes
+ * to can change them. */
+static void measure(const wend_batch_source *source, wend_batch *b, double *restrict q) {
+  const wend_domain domain = *source->domain;
+  double own[3][WEND_LANES], inverse[WEND_LANES];
+  memcpy(own, b->own, sizeof own);
+  memcpy(inverse, b->inverse, sizeof inverse);
   for (int e = 0; e < b->n; e += WEND_LANES)
     for (int lane = 0; lane < WEND_LANES; lane++) {
-      const double *restrict other = source->place[index[e + lane]];
-      for (int a = 0; a < dim; a++) b->arm[a][e + lane] = other[a] - b->own[a][lane];
+      const double x = wend_domain_wrap(&domain, 0, b->arm[0][e + lane] - own[0][lane]);
+      const double y = wend_domain_wrap(&domain, 1, b->arm[1][e + lane] - own[1][lane]);
+      const double z = wend_domain_wrap(&domain, 2, b->arm[2][e + lane] - own[2][lane]);
+      b->arm[0][e + lane] = x;
+      b->arm[1][e + lane] = y;
+      b->arm[2][e + lane] = z;
+      q[e + lane] = sqrt(x * x + y * y + z * z) * inverse[lane];
     }
 }
 
-static void wrap(const wend_domain *domain, int axis, int n, double *restrict arm) {
-  for (int e = 0; e < n; e++) arm[e] = wend_domain_wrap(domain, axis, arm[e]);
-}
-
-/* |r_ij| / H_i, and beyond the support on padding. */
-static void scaled_distances(wend_batch *b, int32_t before, double *restrict q) {
-  for (int e = 0; e < b->n; e += WEND_LANES)
-    for (int lane = 0; lane < WEND_LANES; lane++) {
-      const double x = b->arm[0][e + lane], y = b->arm[1][e + lane], z = b->arm[2][e + lane];
-      q[e + lane] = sqrt(x * x + y * y + z * z) / b->own[3][lane];
-    }
+/* Padding lies beyond the support. `before` entries of each row came before this piece. */
+static void discard_padding(const wend_batch *b, int32_t before, double *restrict q) {
   for (int lane = 0; lane < WEND_LANES; lane++) {
     const int32_t left = b->count[lane] > before ? b->count[lane] - before : 0;
     for (int e = WEND_LANES * left + lane; e < b->n; e += WEND_LANES) q[e] = beyond;
@@ -62,10 +72,9 @@ bool wend_batch_next(const wend_batch_source *source, wend_batch *batch) {
   if (left <= 0) return false;
   batch->n = left < WEND_BATCH ? (int)left : WEND_BATCH;
   gather(source, batch);
-  for (int a = 0; a < source->domain->dim; a++)
-    if (source->domain->period[a] > 0) wrap(source->domain, a, batch->n, batch->arm[a]);
+  measure(source, batch, q);
   const int32_t slice = batch->row[0] / WEND_LANES;
-  scaled_distances(batch, (int32_t)((batch->first - p->first[slice]) / WEND_LANES), q);
+  discard_padding(batch, (int32_t)((batch->first - p->first[slice]) / WEND_LANES), q);
   source->smoothing->shape(batch->n, q, shape);
   for (int e = 0; e < batch->n; e += WEND_LANES)
     for (int lane = 0; lane < WEND_LANES; lane++)

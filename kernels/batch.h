@@ -21,20 +21,20 @@ typedef struct wend_batch_source {
   const wend_pairs *pairs;
   const wend_domain *domain;
   const wend_smoothing *smoothing;
-  const double (
-      *place)[4]; /**< x, y, z, H; owned particles, then ghosts; z is not read in 2-D */
+  const double (*place)[4]; /**< x, y, z, H; owned particles, then ghosts; z = 0 in 2-D */
 } wend_batch_source;
 
 /** One piece of a slice. */
 typedef struct wend_batch {
   int32_t row[WEND_LANES];   /**< the rows; the last one stands in for rows that do not exist */
   int32_t count[WEND_LANES]; /**< entries of each row, 0 where it does not exist */
-  double own[4][WEND_LANES]; /**< x, y, z, H of the rows */
-  double factor[WEND_LANES]; /**< W(r, H) = factor s(r / H) */
-  int64_t first, end;        /**< first entry of this piece; end of the slice */
-  int n;                     /**< entries of this piece, padding included: a multiple of 8 */
-  double arm[3][WEND_BATCH]; /**< r_ij = wrap(x_j - x_i) */
-  double weight[WEND_BATCH]; /**< w_ij = W(|r_ij|, H_i) */
+  double own[3][WEND_LANES]; /**< x, y, z of the rows */
+  double inverse[WEND_LANES]; /**< 1/H */
+  double factor[WEND_LANES];  /**< W(r, H) = factor s(r / H) */
+  int64_t first, end;         /**< first entry of this piece; end of the slice */
+  int n;                      /**< entries of this piece, padding included: a multiple of 8 */
+  double arm[3][WEND_BATCH];  /**< r_ij = wrap(x_j - x_i) */
+  double weight[WEND_BATCH];  /**< w_ij = W(|r_ij|, H_i) */
 } wend_batch;
 
 /** Goes to a slice, before its first piece. Local. */

@@ -1,9 +1,10 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * domain.h: the box the particles live in, and the difference of two places in it.
  *
- * A periodic difference must be odd, wrap(-x) = -wrap(x), bit for bit: both ends of a pair compute
- * it and must agree. Hence differences of unshifted positions and a compare-and-subtract, which
- * also vectorises on processors that have no rounding instruction. */
+ * A periodic difference must be odd, wrap(-x) = -wrap(x), bit for bit: both ends of a pair
+ * compute it and must agree. Hence differences of unshifted positions and a
+ * compare-and-subtract, which also vectorises on processors that have no rounding instruction.
+ */
 #ifndef WEND_KERNELS_DOMAIN_H
 #define WEND_KERNELS_DOMAIN_H
 
@@ -20,9 +21,11 @@ typedef struct wend_domain {
   double thickness; /**< depth of a 2-D run; 1 in 3-D */
 } wend_domain;
 
-/** Minimum-image difference on one axis, for |dx| <= period: an odd function of dx. */
+/** Minimum-image difference on one axis, for |dx| <= period: an odd function of dx. Two masks
+ * and no product with a comparison, which gcc would turn into scalar integer code. */
 static inline double wend_domain_wrap(const wend_domain *d, int axis, double dx) {
-  return dx - d->period[axis] * ((dx > d->half[axis]) - (dx < -d->half[axis]));
+  const double period = d->period[axis], half = d->half[axis];
+  return dx - ((dx > half ? period : 0.0) - (dx < -half ? period : 0.0));
 }
 
 #endif
