@@ -116,40 +116,37 @@ static const wend_key keys[] = {
      .meaning = "where B = 0: diffusivity (parallel + 2 perpendicular) / 3 in all directions, "
                 "or none"},
 
-    {"geometry.smoothing", NAME, .fallback = "wendland-c2", AT(settings.smoothing),
-     .names = smoothing_name, .meaning = "smoothing kernel"},
+    {"geometry.smoothing", NAME, AT(settings.smoothing), .names = smoothing_name,
+     .meaning = "smoothing kernel"},
     {"geometry.neighbours", NUMBER(6, 1000), .fallback = "(20 in 2-D, 48 in 3-D)",
      AT(settings.neighbours),
      .meaning = "neighbours within the support, the particle itself included"},
-    {"geometry.closure", NUMBER(0, 1), .positive = true, .fallback = "2e-3",
-     AT(settings.closure),
+    {"geometry.closure", NUMBER(0, 1), .positive = true, AT(settings.closure),
      .meaning = "faces are swept until sum_j A_ij is below this share of sum_j |A_ij|"},
-    {"geometry.sweeps", COUNT(1, 10000), .fallback = "32", AT(settings.sweeps),
-     .meaning = "sweeps at most"},
-    {"geometry.close_faces", SWITCH, .fallback = "yes", AT(settings.close_faces),
+    {"geometry.sweeps", COUNT(1, 10000), AT(settings.sweeps), .meaning = "sweeps at most"},
+    {"geometry.close_faces", SWITCH, AT(settings.close_faces),
      .meaning = "ask for sum_j A_ij = 0; no only to see what it is worth"},
-    {"geometry.fix_volumes", SWITCH, .fallback = "yes", AT(settings.fix_volumes),
+    {"geometry.fix_volumes", SWITCH, AT(settings.fix_volumes),
      .meaning = "ask for sum_j A_ij.r_ij = 2 D V_i; no only to see what it is worth"},
 
-    {"exchange.angle_power", NUMBER(0, 64), .fallback = "4", AT(settings.angle_power),
+    {"exchange.angle_power", NUMBER(0, 64), AT(settings.angle_power),
      .meaning = "power of the squared cosine between pair and field in the low-order exchange"},
-    {"exchange.angle_share", NUMBER(0, 1), .fallback = "0.6", AT(settings.angle_share),
+    {"exchange.angle_share", NUMBER(0, 1), AT(settings.angle_share),
      .meaning = "share of the low-order exchange that is kept along the field"},
 
-    {"stepping.scheme", NAME, .fallback = "rkg2", AT(settings.supertime), .names = scheme_name,
+    {"stepping.scheme", NAME, AT(settings.supertime), .names = scheme_name,
      .meaning = "super-time-stepping family"},
-    {"stepping.stages", COUNT(1, WEND_STAGES_MOST), .fallback = "21", AT(settings.stages),
+    {"stepping.stages", COUNT(1, WEND_STAGES_MOST), AT(settings.stages),
      .meaning = "stages a super-step at most, an odd number"},
-    {"stepping.margin", NUMBER(0, 1), .positive = true, .fallback = "0.95", AT(settings.margin),
+    {"stepping.margin", NUMBER(0, 1), .positive = true, AT(settings.margin),
      .meaning = "share of the stable length that is used"},
-    {"stepping.tolerance", NUMBER(0, 1), .positive = true, .fallback = "1e-4",
-     AT(settings.tolerance),
+    {"stepping.tolerance", NUMBER(0, 1), .positive = true, AT(settings.tolerance),
      .meaning = "error a super-step, summed over volume, over the total energy"},
     {"stepping.first", SIZE(WEND_Q_TIME), .fallback = "(one explicit step)",
      AT(settings.first_step), .meaning = "length of the first super-step"},
     {"stepping.fixed", SIZE(WEND_Q_TIME), .fallback = "(lengths from the tolerance)",
      AT(settings.fixed_step), .meaning = "length of every super-step, without error control"},
-    {"stepping.local_bounds", SWITCH, .fallback = "no", AT(settings.local_bounds),
+    {"stepping.local_bounds", SWITCH, AT(settings.local_bounds),
      .meaning = "also test each particle against the range of its neighbourhood (costs time)"},
 };
 
@@ -164,7 +161,23 @@ int wend_key_find(const char *path) {
 }
 
 const char *wend_key_fallback(const wend_key *key) {
-  return key->fallback[0] == '(' ? NULL : key->fallback;
+  return key->fallback != NULL && key->fallback[0] != '(' ? key->fallback : NULL;
+}
+
+/* The default as people read it; where the row has none it is the library's. */
+static void default_text(const wend_key *key, size_t size, char *text) {
+  const wend_setup library = {.settings = wend_settings_default()};
+  const char *value = (const char *)&library + key->offset;
+  if (key->fallback != NULL)
+    snprintf(text, size, "%s", key->fallback);
+  else if (key->kind == WEND_KEY_NAME)
+    snprintf(text, size, "%s", *(const char *const *)value);
+  else if (key->kind == WEND_KEY_SWITCH)
+    snprintf(text, size, "%s", *(const bool *)value ? "yes" : "no");
+  else if (key->kind == WEND_KEY_COUNT)
+    snprintf(text, size, "%d", *(const int *)value);
+  else
+    snprintf(text, size, "%g", *(const double *)value);
 }
 
 /* What a value looks like, in a word or two. */
@@ -193,7 +206,9 @@ void wend_setup_explain(FILE *out) {
   fprintf(out, "%-44s %-18s %-32s %s\n", "key", "value", "default", "meaning");
   for (int k = 0; k < wend_key_count(); k++) {
     const wend_key *key = &keys[k];
-    fprintf(out, "%-44s %-18s %-32s %s", key->path, value_of(key), key->fallback, key->meaning);
+    char fallback[64];
+    default_text(key, sizeof fallback, fallback);
+    fprintf(out, "%-44s %-18s %-32s %s", key->path, value_of(key), fallback, key->meaning);
     for (int n = 0; key->names != NULL && key->names(n) != NULL; n++)
       fprintf(out, "%s%s", n == 0 ? ": " : ", ", key->names(n));
     fprintf(out, "\n");

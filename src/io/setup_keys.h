@@ -23,9 +23,10 @@ typedef struct wend_key {
   const char *path; /**< groups and key, joined by points */
   wend_key_kind kind;
   wend_quantity quantity; /**< of a QUANTITY, a LAW, and the entries of a LIST */
-  const char *fallback;   /**< the default as a user would write it; in brackets: in words */
-  double least, most;     /**< range of a COUNT or QUANTITY, ends included */
-  bool positive;          /**< greater than 0, beside the range */
+  const char *fallback; /**< the default as a user would write it; in brackets: in words; NULL:
+                           that of wend_settings_default */
+  double least, most;   /**< range of a COUNT or QUANTITY, ends included */
+  bool positive;        /**< greater than 0, beside the range */
   const char *(*names)(int k); /**< the k-th allowed name, NULL beyond the last */
   size_t offset; /**< of the value in wend_setup; WEND_KEY_ELSEWHERE: set by its own code */
   const char *meaning;
@@ -39,7 +40,7 @@ const wend_key *wend_key_at(int k);
 int wend_key_find(const char *path);
 /** How many keys there are. Local. */
 int wend_key_count(void);
-/** The default as text; NULL where the table only describes it. Local. */
+/** The default as text to be understood; NULL where there is none. Local. */
 const char *wend_key_fallback(const wend_key *key);
 
 #endif

@@ -148,7 +148,7 @@ static void store_if_any(wend_setup_reader *reader, int k) {
   if (given != NULL && given[0] == '\0') wend_setup_fail(reader, key->path, "has no value");
   if (given == NULL && wend_setup_given(reader, key->path) && key->kind <= WEND_KEY_QUANTITY)
     wend_setup_fail(reader, key->path, "has no value");
-  if (given == NULL && strcmp(key->fallback, "(required)") == 0)
+  if (given == NULL && key->fallback != NULL && strcmp(key->fallback, "(required)") == 0)
     wend_setup_fail(reader, key->path, "is missing: %s", key->meaning);
   if (reader->team->status == WEND_OK && (given != NULL || fallback != NULL))
     store_scalar(reader, key, given != NULL ? given : fallback);
