@@ -25,7 +25,7 @@ START_TEST(lowest_failing_rank_is_heard) {
     ck_assert(spread_everywhere(wend_agree(&team) == WEND_OK));
   }
   for (int only = 0; only < team.size; only++) {
-    char text[16];
+    char text[32];
     snprintf(text, sizeof text, "from %d", only);
     if (team.rank == only) wend_fail(&team, WEND_ERR_GEOMETRY, "from %d", only);
     ck_assert(spread_everywhere(wend_agree(&team) == WEND_ERR_GEOMETRY));
