@@ -6,6 +6,9 @@
 /* Change of length from one step to the next, and how far below the tolerance it aims. */
 static const double shrink_most = 0.3, grow_most = 2, aim = 0.8;
 
+/* Growth after a step that the bounds had shortened: gentle, since each failure costs an attempt. */
+static const double grow_after_bounds = 1.189207115002721;
+
 /* Order of the local error of a second-order scheme. */
 static const double local_order = 3;
 
@@ -89,8 +92,8 @@ bool wend_control_judge(wend_control *control, const wend_settings *settings,
   }
   control->steps[plan->cause]++;
   if (plan->cause == WEND_CAUSE_BOUNDS) {
-    control->wanted = plan->step * fmin(factor, 1);
-    control->cause = WEND_CAUSE_BOUNDS;
+    control->wanted = plan->step * fmin(factor, grow_after_bounds);
+    control->cause = factor < grow_after_bounds ? WEND_CAUSE_ACCURACY : WEND_CAUSE_BOUNDS;
   } else if (plan->cause == WEND_CAUSE_OUTPUT || plan->cause == WEND_CAUSE_STAGES) {
     control->wanted = fmax(fmin(control->wanted, plan->step * grow_most), plan->step * factor);
     control->cause = WEND_CAUSE_ACCURACY;

@@ -10,7 +10,7 @@ wend_settings wend_settings_default(void) {
       .sweeps = 32,
       .close_faces = true,
       .fix_volumes = true,
-      .angle_power = 4,
+      .angle_power = 8,
       .angle_share = 0.6,
       .limited = true,
       .isotropic_unmagnetised = true,
