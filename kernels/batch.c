@@ -2,6 +2,8 @@
  * batch.c: arms and weights of a slice of rows, a piece at a time. */
 #include "batch.h"
 
+#include "clones.h"
+
 #include <math.h>
 #include <string.h>
 
@@ -39,7 +41,8 @@ static void gather(const wend_batch_source *source, wend_batch *b) {
 
 /* Places become arms, and q = |r_ij| / H_i. The copies tell the compiler that nothing it writes
  * to can change them. */
-static void measure(const wend_batch_source *source, wend_batch *b, double *restrict q) {
+WEND_CLONES static void measure(const wend_batch_source *source, wend_batch *b,
+                                double *restrict q) {
   const wend_domain domain = *source->domain;
   double own[3][WEND_LANES], inverse[WEND_LANES];
   memcpy(own, b->own, sizeof own);
@@ -64,6 +67,14 @@ static void discard_padding(const wend_batch *b, int32_t before, double *restric
   }
 }
 
+WEND_CLONES static void weigh(wend_batch *b, const double *restrict shape) {
+  double factor[WEND_LANES];
+  memcpy(factor, b->factor, sizeof factor);
+  for (int e = 0; e < b->n; e += WEND_LANES)
+    for (int lane = 0; lane < WEND_LANES; lane++)
+      b->weight[e + lane] = factor[lane] * shape[e + lane];
+}
+
 bool wend_batch_next(const wend_batch_source *source, wend_batch *batch) {
   const wend_pairs *p = source->pairs;
   double q[WEND_BATCH], shape[WEND_BATCH];
@@ -76,8 +87,6 @@ bool wend_batch_next(const wend_batch_source *source, wend_batch *batch) {
   const int32_t slice = batch->row[0] / WEND_LANES;
   discard_padding(batch, (int32_t)((batch->first - p->first[slice]) / WEND_LANES), q);
   source->smoothing->shape(batch->n, q, shape);
-  for (int e = 0; e < batch->n; e += WEND_LANES)
-    for (int lane = 0; lane < WEND_LANES; lane++)
-      batch->weight[e + lane] = batch->factor[lane] * shape[e + lane];
+  weigh(batch, shape);
   return true;
 }

@@ -2,6 +2,8 @@
  * gradient.c: moving-least-squares matrices, coefficients and gradients. */
 #include "gradient.h"
 
+#include "clones.h"
+
 #include <math.h>
 
 /* Least 1/(|M| |M^-1|) in Frobenius norms, at most 1/D. Eigenvalues of M go with squares of
@@ -19,7 +21,7 @@ static const int row_axis[6] = {0, 0, 0, 1, 1, 2};
 static const int column_axis[6] = {0, 1, 2, 1, 2, 2};
 static const int diagonal[3] = {0, 3, 5};
 
-static void add_moment(const wend_batch *b, int k, double sum[WEND_LANES]) {
+WEND_CLONES static void add_moment(const wend_batch *b, int k, double sum[WEND_LANES]) {
   const double *restrict w = b->weight;
   const double *x = b->arm[row_axis[k]], *y = b->arm[column_axis[k]];
   double s[WEND_LANES];
@@ -92,11 +94,8 @@ int32_t wend_gradient_matrices(const wend_pairs *pairs, wend_slices slices,
   return fallbacks;
 }
 
-void wend_gradient_coefficients(const wend_batch *batch, const double (*restrict inverse)[6],
-                                double c[restrict 3][WEND_BATCH]) {
-  double m[6][WEND_LANES];
-  for (int lane = 0; lane < WEND_LANES; lane++)
-    for (int k = 0; k < 6; k++) m[k][lane] = inverse[batch->row[lane]][k];
+WEND_CLONES static void multiply(const wend_batch *batch, double m[6][WEND_LANES],
+                                 double c[restrict 3][WEND_BATCH]) {
   for (int e = 0; e < batch->n; e += WEND_LANES)
     for (int lane = 0; lane < WEND_LANES; lane++) {
       const double x = batch->arm[0][e + lane], y = batch->arm[1][e + lane];
@@ -105,6 +104,14 @@ void wend_gradient_coefficients(const wend_batch *batch, const double (*restrict
       c[1][e + lane] = w * (m[1][lane] * x + m[3][lane] * y + m[4][lane] * z);
       c[2][e + lane] = w * (m[2][lane] * x + m[4][lane] * y + m[5][lane] * z);
     }
+}
+
+void wend_gradient_coefficients(const wend_batch *batch, const double (*restrict inverse)[6],
+                                double c[restrict 3][WEND_BATCH]) {
+  double m[6][WEND_LANES];
+  for (int lane = 0; lane < WEND_LANES; lane++)
+    for (int k = 0; k < 6; k++) m[k][lane] = inverse[batch->row[lane]][k];
+  multiply(batch, m, c);
 }
 
 /* Adds c_ij (e_j - e_i) of a piece to the rows' sums. */

@@ -8,6 +8,8 @@
  * side, so that the loops vectorise. */
 #include "hilbert.h"
 
+#include "clones.h"
+
 enum { BATCH = 64, BITS_2D = 31, BITS_3D = 21 };
 
 /* Cell numbers on one axis; a coordinate that is not a number counts as the lower border. */
@@ -50,14 +52,14 @@ static void turn_other(int bit, uint32_t *restrict x0, uint32_t *restrict xa) {
   }
 }
 
-static void undo_turns(int dim, int bits, uint32_t x[3][BATCH]) {
+WEND_CLONES static void undo_turns(int dim, int bits, uint32_t x[3][BATCH]) {
   for (int bit = bits - 1; bit > 0; bit--) {
     turn_first(bit, x[0]);
     for (int axis = 1; axis < dim; axis++) turn_other(bit, x[0], x[axis]);
   }
 }
 
-static void gray_encode(int dim, uint32_t x[3][BATCH]) {
+WEND_CLONES static void gray_encode(int dim, uint32_t x[3][BATCH]) {
   for (int axis = 1; axis < dim; axis++)
     for (int k = 0; k < BATCH; k++) x[axis][k] ^= x[axis - 1][k];
   for (int k = 0; k < BATCH; k++) {
@@ -86,7 +88,8 @@ static inline uint64_t spread_by_three(uint32_t from) {
   return (x | x << 2) & UINT64_C(0x1249249249249249);
 }
 
-static void interleave(int dim, int n, uint32_t x[3][BATCH], uint64_t *restrict key) {
+WEND_CLONES static void interleave(int dim, int n, uint32_t x[3][BATCH],
+                                   uint64_t *restrict key) {
   if (dim == 2)
     for (int k = 0; k < n; k++) key[k] = spread_by_two(x[0][k]) << 1 | spread_by_two(x[1][k]);
   else

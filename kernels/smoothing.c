@@ -10,6 +10,8 @@
  * up. */
 #include "smoothing.h"
 
+#include "clones.h"
+
 #include <math.h>
 #include <stddef.h>
 #include <string.h>
@@ -18,7 +20,7 @@
 
 static inline double positive_part(double x) { return 0.5 * (x + fabs(x)); }
 
-static void shape_wendland_c2(int n, const double *restrict q, double *restrict s) {
+WEND_CLONES static void shape_wendland_c2(int n, const double *restrict q, double *restrict s) {
   for (int i = 0; i < n; i++) {
     const double u = positive_part(1.0 - q[i]);
     const double u2 = u * u;
@@ -26,14 +28,15 @@ static void shape_wendland_c2(int n, const double *restrict q, double *restrict 
   }
 }
 
-static void slope_wendland_c2(int n, const double *restrict q, double *restrict ds) {
+WEND_CLONES static void slope_wendland_c2(int n, const double *restrict q,
+                                          double *restrict ds) {
   for (int i = 0; i < n; i++) {
     const double u = positive_part(1.0 - q[i]);
     ds[i] = -20.0 * q[i] * (u * u * u);
   }
 }
 
-static void shape_wendland_c4(int n, const double *restrict q, double *restrict s) {
+WEND_CLONES static void shape_wendland_c4(int n, const double *restrict q, double *restrict s) {
   for (int i = 0; i < n; i++) {
     const double u = positive_part(1.0 - q[i]);
     const double u3 = u * u * u;
@@ -41,7 +44,8 @@ static void shape_wendland_c4(int n, const double *restrict q, double *restrict 
   }
 }
 
-static void slope_wendland_c4(int n, const double *restrict q, double *restrict ds) {
+WEND_CLONES static void slope_wendland_c4(int n, const double *restrict q,
+                                          double *restrict ds) {
   for (int i = 0; i < n; i++) {
     const double u = positive_part(1.0 - q[i]);
     const double u2 = u * u;
@@ -49,7 +53,8 @@ static void slope_wendland_c4(int n, const double *restrict q, double *restrict 
   }
 }
 
-static void shape_cubic_spline(int n, const double *restrict q, double *restrict s) {
+WEND_CLONES static void shape_cubic_spline(int n, const double *restrict q,
+                                           double *restrict s) {
   for (int i = 0; i < n; i++) {
     const double u = positive_part(1.0 - q[i]);
     const double v = positive_part(0.5 - q[i]);
@@ -57,7 +62,8 @@ static void shape_cubic_spline(int n, const double *restrict q, double *restrict
   }
 }
 
-static void slope_cubic_spline(int n, const double *restrict q, double *restrict ds) {
+WEND_CLONES static void slope_cubic_spline(int n, const double *restrict q,
+                                           double *restrict ds) {
   for (int i = 0; i < n; i++) {
     const double u = positive_part(1.0 - q[i]);
     const double v = positive_part(0.5 - q[i]);
