@@ -4,7 +4,8 @@
  * The default build is for any processor of the architecture. A function marked WEND_CLONES is
  * compiled for wider vectors as well, where compiler and C library can choose at run time. No
  * variant fuses multiplication and addition, and no sum is reordered: all give the same bits.
- */
+ * Only for static functions: clang 14 gives a public one no symbol of its own name; and helpers
+ * that are not inlined need the mark themselves. */
 #ifndef WEND_KERNELS_CLONES_H
 #define WEND_KERNELS_CLONES_H
 
