@@ -2,38 +2,43 @@
  * leaves.h: the leaves near a group of particles, in single precision about the group's centre.
  *
  * Lengths are in units of the group's largest radius. Single precision halves the work of a
- * comparison; what it cannot decide is left to double precision: every box and particle carries
- * a slack, a bound on the round-off of r^2 - H^2, and only differences beyond it count as
- * decided. With s = (diameter of the group) + (larger radius), coordinates that matter are
- * below s, so r^2 - H^2 is wrong by less than 14 x 2^-24 s^2; 2^-19 s^2 is used, plus the
- * round-off of positions in double precision. Beyond s the relative error of r^2 stays as
- * small. The slack is infinite where nothing can be said: in groups so wide that the nearest
- * image differs among the members. */
+ * comparison; what it cannot decide is left to double precision: every box and particle has a
+ * slack, a bound on the round-off of r^2 - H^2, and only differences beyond it are decided. With
+ * s = (diameter of the group) + (larger radius), coordinates that matter are below s, so that
+ * r^2 - H^2 is wrong by less than 14 x 2^-24 s^2; 2^-19 s^2 is used, and the round-off of positions
+ * in double precision is added. Beyond s the relative error of r^2 stays as small. The slack is
+ * infinite where nothing can be said: in groups so wide that nearest images differ in them. */
 #ifndef WEND_KERNELS_LEAVES_H
 #define WEND_KERNELS_LEAVES_H
 
 #include "walk.h"
 
-#define WEND_NEAR_LEAVES 256
+#define WEND_NEAR_LEAVES 256 /* a multiple of 8 */
 
 /** Where a group stands. */
 typedef struct wend_frame {
-  double centre[3];
-  double scale;   /**< 1 / largest radius of the group */
-  double spread;  /**< diameter, scaled */
-  double round;   /**< round-off of a position, scaled, with a margin */
-  double largest; /**< scaled radius from which on nearest images cannot be trusted */
+  double centre[4]; /**< 4th: 0 */
+  double scale;     /**< 1 / largest radius of the group */
+  double spread;    /**< diameter, scaled */
+  double round;     /**< round-off of a position, scaled, with a margin */
+  double largest;   /**< scaled radius from which on nearest images cannot be trusted */
 } wend_frame;
 
 /** Leaves by their boxes, in canonical order. */
 typedef struct wend_leaves {
   int32_t n;
-  int32_t slot[WEND_NEAR_LEAVES]; /**< position in the collection this one was chosen from */
-  int32_t leaf[WEND_NEAR_LEAVES]; /**< number of the leaf in the tree */
+  int32_t slot[WEND_NEAR_LEAVES]; /**< number in the collection these were chosen from */
   float lo[3][WEND_NEAR_LEAVES], hi[3][WEND_NEAR_LEAVES];
   float reach2[WEND_NEAR_LEAVES]; /**< square of the largest support inside; 0 if not mutual */
   float slack[WEND_NEAR_LEAVES];
 } wend_leaves;
+
+/** Where the members of a leaf are measured from. */
+typedef struct wend_origin {
+  double at[4];   /**< the group's centre, moved by periods; 4th: 0 */
+  int32_t leaf;   /**< number of the leaf in the tree */
+  bool straddles; /**< its members differ in which image is nearest; at is the centre */
+} wend_origin;
 
 /** Frame of the group of a walk. Local. */
 wend_frame wend_frame_of(const wend_walk *walk);
@@ -44,17 +49,8 @@ static inline double wend_frame_slack(const wend_frame *f, double q) {
   return radius < f->largest ? s * (0x1p-19 * s + f->round) : INFINITY;
 }
 
-/** Collects leaves from a walk until it ends or there is no more room. Local. */
-void wend_leaves_collect(wend_walk *walk, const wend_frame *frame, wend_leaves *leaves);
-
-/** Chooses the leaves that reach a box lo..hi (or a place, lo = hi) of squared radius h2,
- * scaled: their positions in leaves go to list [WEND_NEAR_LEAVES], their number is returned.
- * Local. */
-int32_t wend_leaves_choose(const wend_leaves *leaves, const float lo[3], const float hi[3],
-                           float h2, int32_t *restrict list);
-
-/** Copies leaves by their positions in another collection. Local. */
-void wend_leaves_copy(const wend_leaves *from, int32_t n, const int32_t *restrict list,
-                      wend_leaves *restrict to);
+/** Collects leaves from a walk until it ends or WEND_NEAR_LEAVES are there. Local. */
+void wend_leaves_collect(wend_walk *walk, const wend_frame *frame, wend_leaves *leaves,
+                         wend_origin origin[WEND_NEAR_LEAVES]);
 
 #endif

@@ -1,163 +1,58 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * search.c: lists of pairs, slice after slice.
  *
- * One walk serves a group of up to eight slices. Particles of the leaves it meets are laid side
- * by side in single precision, and each row compares itself with those in leaves that it
- * reaches, in a loop without branches. What single precision cannot decide (a few pairs in
- * 10^5) is decided by r^2 < max(H_i, H_j)^2 in double precision, the same bits from both ends:
- * differences are odd functions, and squares are summed in the order of the axes. Rows of very
- * different supports, or far apart, are walked for by themselves, so that the largest support
- * costs its own row only. */
+ * One walk serves a group of up to eight slices: the particles near the group are laid out once,
+ * each slice narrows them down to the leaves that matter to it, each row again, and only then
+ * are particles compared. Rows of very different supports, or far apart, are walked for by
+ * themselves, so that a large support costs its own row only. */
 #include "search.h"
 
-#include "clones.h"
-#include "leaves.h"
+#include "near.h"
 
 #define GROUP_SLICES 8
 #define GROUP_EXTENT 4.0 /* a group is no wider than so many of its smallest support, ... */
 #define GROUP_RATIO 4.0  /* ... and its supports differ by no more than this factor */
-#define NEAR (WEND_NEAR_LEAVES * WEND_LEAF)
 
-/* What rows of a group search through. */
-typedef struct vicinity {
-  wend_frame frame;
-  wend_leaves leaves;
-  float x[3][NEAR]; /* particles of the leaves, scaled and about the centre */
-  float h2[NEAR], slack[NEAR];
-  int32_t store[NEAR];
-} vicinity;
+/* A search under way. */
+typedef struct work {
+  const wend_search *search;
+  const wend_near_kit *kit;
+  wend_near near;
+} work;
 
-/* One row: its place in the group's frame, and its list so far. */
-typedef struct lister {
-  int32_t self;
-  float x[3], h2;
-  int32_t *list; /* every eighth place is its own */
+/* The list of one row: every eighth place of `at` is its own. */
+typedef struct list {
+  int32_t *at;
   int64_t room;  /* places there are */
   int64_t count; /* places needed */
-} lister;
+} list;
 
-/* r^2 of two places, unshifted positions and minimum image. */
-static inline double distance2(const wend_domain *d, const double *a, const double *b) {
-  double r2 = 0.0;
-  for (int axis = 0; axis < 3; axis++) {
-    const double dx = wend_domain_wrap(d, axis, b[axis] - a[axis]);
-    r2 += dx * dx;
-  }
-  return r2;
+/* Number of the leaf in the collection that holds a particle, from a guess at or below it; -1 where
+ * it is not there. */
+static int32_t slot_of(const wend_near *near, int32_t guess, int32_t self) {
+  const int32_t leaf = self / WEND_LEAF, n = near->leaves.n;
+  while (guess < n && near->origin[guess].leaf < leaf)
+    guess++;
+  return guess < n && near->origin[guess].leaf == leaf ? guess : -1;
 }
 
-/* The predicate itself. */
-static inline bool is_pair(const wend_search *s, int32_t i, int32_t j) {
-  const double *a = s->place[i], *b = s->place[j];
-  const double h = a[3] > b[3] ? a[3] : b[3];
-  return distance2(s->domain, a, b) < h * h;
+/* Continues a row's list with its pairs among some leaves of the collection. */
+static void row_list(work *w, const wend_leaves *leaves, const wend_member *m, int32_t slot,
+                     list *list) {
+  int32_t slots[WEND_NEAR_LEAVES + 8], hits[WEND_NEAR + 8];
+  const int32_t n = w->kit->choose(leaves, m, slots);
+  const int32_t own = slot < 0 ? -1 : slot * WEND_LEAF + m->self % WEND_LEAF;
+  const float x = wend_near_swap(&w->near, own, INFINITY);
+  const int32_t found = w->kit->sieve(&w->near, m, n, slots, hits);
+  wend_near_swap(&w->near, own, x);
+  const int64_t left = list->room - list->count, kept = found < left ? found : left;
+  int32_t *at = list->at + WEND_LANES * list->count;
+  for (int64_t k = 0; k < kept; k++)
+    at[WEND_LANES * k] = hits[k];
+  list->count += found;
 }
 
-/* Lays the particles of leaf number k of the vicinity side by side; a leaf that is not full
- * ends with particles infinitely far away. */
-static void leaf_load(const wend_search *s, vicinity *v, int32_t k) {
-  const wend_frame *f = &v->frame;
-  const int32_t begin = v->leaves.leaf[k] * WEND_LEAF, at = k * WEND_LEAF;
-  const int32_t n = s->tree->n - begin < WEND_LEAF ? s->tree->n - begin : WEND_LEAF;
-  float q[WEND_LEAF] = {0.0f};
-  for (int32_t j = 0; j < n; j++) {
-    const double *place = s->place[begin + j];
-    for (int a = 0; a < 3; a++)
-      v->x[a][at + j] =
-          (float)(wend_domain_wrap(s->domain, a, place[a] - f->centre[a]) * f->scale);
-    q[j] = (float)(place[3] * f->scale);
-    v->store[at + j] = s->store[begin + j];
-  }
-  for (int32_t j = 0; j < WEND_LEAF; j++) {
-    v->h2[at + j] = q[j] * q[j];
-    v->slack[at + j] = (float)wend_frame_slack(f, q[j]);
-  }
-  for (int32_t j = n; j < WEND_LEAF; j++) {
-    v->x[0][at + j] = v->x[1][at + j] = v->x[2][at + j] = INFINITY;
-    v->store[at + j] = -1;
-  }
-}
-
-/* Collects the next leaves of a walk; false where some are left. */
-static bool vicinity_fill(const wend_search *s, wend_walk *walk, vicinity *v) {
-  wend_leaves_collect(walk, &v->frame, &v->leaves);
-  for (int32_t k = 0; k < v->leaves.n; k++) leaf_load(s, v, k);
-  return walk->level < 0;
-}
-
-static lister row_begin(const wend_search *s, const wend_frame *f, int32_t row) {
-  lister r = {.self = s->row[row]};
-  const double *place = s->place[r.self], q = place[3] * f->scale;
-  for (int a = 0; a < 3; a++) r.x[a] = (float)((place[a] - f->centre[a]) * f->scale);
-  r.h2 = (float)(q * q);
-  return r;
-}
-
-/* d = r^2 - max(H_i, H_j)^2 for the particles of n leaves. Tells whether any is too close to
- * call. */
-WEND_CLONES
-static int compare(const vicinity *restrict v, int32_t n, const int32_t *restrict slot,
-                   const float *restrict at, float h2, float *restrict d) {
-  int32_t close[WEND_LEAF] = {0}, any = 0;
-  for (int32_t m = 0; m < n; m++) {
-    const int32_t k = slot[m] * WEND_LEAF;
-#pragma GCC unroll 1 /* else gcc unrolls the particles and vectorises over leaves */
-    for (int32_t j = 0; j < WEND_LEAF; j++) {
-      const float x = v->x[0][k + j] - at[0];
-      const float y = v->x[1][k + j] - at[1];
-      const float z = v->x[2][k + j] - at[2];
-      const float r2 = v->h2[k + j] > h2 ? v->h2[k + j] : h2;
-      const float over = x * x + y * y + z * z - r2;
-      d[m * WEND_LEAF + j] = over;
-      close[j] |= !(fabsf(over) > v->slack[k + j]);
-    }
-  }
-  for (int32_t j = 0; j < WEND_LEAF; j++) any |= close[j];
-  return any;
-}
-
-/* Decides what is too close to call. */
-static void decide(const wend_search *s, const vicinity *v, int32_t n, const int32_t *slot,
-                   int32_t self, float *d) {
-  for (int32_t m = 0; m < n * WEND_LEAF; m++) {
-    const int32_t k = slot[m / WEND_LEAF], lane = m % WEND_LEAF;
-    const int32_t j = v->leaves.leaf[k] * WEND_LEAF + lane;
-    if (!(fabsf(d[m]) > v->slack[k * WEND_LEAF + lane]))
-      d[m] = j < s->tree->n && is_pair(s, self, j) ? -1.0f : 1.0f;
-  }
-}
-
-/* Appends those with d < 0 to the row's list. */
-static void append(const vicinity *v, int32_t n, const int32_t *restrict slot,
-                   const float *restrict d, lister *r) {
-  int64_t count = r->count;
-  const bool roomy = count + (int64_t)n * WEND_LEAF <= r->room;
-  for (int32_t m = 0; m < n; m++) {
-    const int32_t *store = v->store + slot[m] * WEND_LEAF;
-    for (int32_t j = 0; j < WEND_LEAF; j++) {
-      if (roomy || count < r->room) r->list[WEND_LANES * count] = store[j];
-      count += d[m * WEND_LEAF + j] < 0.0f;
-    }
-  }
-  r->count = count;
-}
-
-/* Continues a row's list with its pairs among some leaves of the vicinity. */
-static void row_list(const wend_search *s, const vicinity *v, const wend_leaves *leaves,
-                     lister *r) {
-  int32_t slot[WEND_NEAR_LEAVES];
-  float d[NEAR];
-  const int32_t n = wend_leaves_choose(leaves, r->x, r->x, r->h2, slot);
-  for (int32_t m = 0; m < n; m++) slot[m] = leaves->slot[slot[m]];
-  if (compare(v, n, slot, r->x, r->h2, d)) decide(s, v, n, slot, r->self, d);
-  const int32_t own = r->self / WEND_LEAF;
-  int32_t m = 0;
-  while (m < n && v->leaves.leaf[slot[m]] < own) m++;
-  if (m < n && v->leaves.leaf[slot[m]] == own) d[m * WEND_LEAF + r->self % WEND_LEAF] = 1.0f;
-  append(v, n, slot, d, r);
-}
-
-/* Adds rows begin, begin + 1, ... to the group of a walk as long as they fit together; returns
+/* Gathers rows begin, begin + 1, ... into the group of a walk as long as they fit together; returns
  * the first that does not. */
 static int32_t group_gather(const wend_search *s, int32_t begin, int32_t end, wend_walk *walk) {
   *walk = wend_walk_begin(s->tree, s->domain, true);
@@ -168,7 +63,8 @@ static int32_t group_gather(const wend_search *s, int32_t begin, int32_t end, we
     wend_walk_add(&wider, place);
     smallest = place[3] < smallest ? place[3] : smallest;
     double extent = 0.0;
-    for (int a = 0; a < 3; a++) extent = fmax(extent, wider.hi[a] - wider.lo[a]);
+    for (int a = 0; a < 3; a++)
+      extent = fmax(extent, wider.hi[a] - wider.lo[a]);
     const bool fits =
         extent <= GROUP_EXTENT * smallest && wider.reach <= GROUP_RATIO * smallest;
     if (row > begin && !fits) return row;
@@ -177,85 +73,67 @@ static int32_t group_gather(const wend_search *s, int32_t begin, int32_t end, we
   return end;
 }
 
-/* The leaves of the vicinity that matter to some rows of the group. */
-static void leaves_of_rows(const vicinity *v, int32_t n, const lister *r, wend_leaves *leaves) {
-  float lo[3], hi[3], h2 = r->h2;
-  for (int a = 0; a < 3; a++) lo[a] = hi[a] = r->x[a];
+/* The leaves of the collection that matter to some members. */
+static void leaves_of(work *w, int32_t n, const wend_member *m, wend_leaves *leaves) {
+  wend_member lo = *m, hi = *m;
   for (int32_t k = 1; k < n; k++) {
     for (int a = 0; a < 3; a++) {
-      lo[a] = r[k].x[a] < lo[a] ? r[k].x[a] : lo[a];
-      hi[a] = r[k].x[a] > hi[a] ? r[k].x[a] : hi[a];
+      lo.x[a] = m[k].x[a] < lo.x[a] ? m[k].x[a] : lo.x[a];
+      hi.x[a] = m[k].x[a] > hi.x[a] ? m[k].x[a] : hi.x[a];
     }
-    h2 = r[k].h2 > h2 ? r[k].h2 : h2;
+    hi.h2 = m[k].h2 > hi.h2 ? m[k].h2 : hi.h2;
   }
-  int32_t list[WEND_NEAR_LEAVES];
-  const int32_t m = wend_leaves_choose(&v->leaves, lo, hi, h2, list);
-  wend_leaves_copy(&v->leaves, m, list, leaves);
+  w->kit->narrow(&w->near.leaves, lo.x, hi.x, hi.h2, leaves);
 }
 
-/* Lists the rows of one slice from a vicinity that holds all they need. */
-static void slice_list(const wend_search *s, const vicinity *v, int32_t begin, int32_t end,
-                       int32_t *out, int64_t room, int64_t *restrict count) {
-  lister r[WEND_LANES];
+/* Continues the lists of rows begin .. end - 1 of one slice, from what is near. */
+static void rows_list(work *w, int32_t begin, int32_t end, list *lists) {
+  wend_member m[WEND_LANES];
   wend_leaves leaves;
-  for (int32_t k = 0; k < end - begin; k++) {
-    r[k] = row_begin(s, &v->frame, begin + k);
-    r[k].list = out + k;
-    r[k].room = room;
-  }
-  leaves_of_rows(v, end - begin, r, &leaves);
-  for (int32_t k = 0; k < end - begin; k++) {
-    row_list(s, v, &leaves, &r[k]);
-    count[k] = r[k].count;
+  for (int32_t row = begin; row < end; row++)
+    m[row - begin] = wend_near_member(&w->near, w->search->row[row]);
+  leaves_of(w, end - begin, m, &leaves);
+  int32_t slot = 0;
+  for (int32_t row = begin; row < end; row++) {
+    const int32_t own = slot_of(&w->near, slot, m[row - begin].self);
+    slot = own < 0 ? slot : own;
+    row_list(w, &leaves, &m[row - begin], own, &lists[row - begin]);
   }
 }
 
-/* Lists the rows of one slice group by group, from as many fillings of the vicinity as it
- * takes. */
-static void slice_list_apart(const wend_search *s, vicinity *v, int32_t begin, int32_t end,
-                             int32_t *out, int64_t room, int64_t *restrict count) {
+/* Lists the rows of one slice group by group, laying out what is near as often as it takes. */
+static void slice_list_apart(work *w, int32_t begin, int32_t end, list *lists) {
   for (int32_t row = begin, next; row < end; row = next) {
     wend_walk walk;
-    next = group_gather(s, row, end, &walk);
-    v->frame = wend_frame_of(&walk);
-    lister r[WEND_LANES];
-    for (int32_t k = row; k < next; k++) {
-      r[k - row] = row_begin(s, &v->frame, k);
-      r[k - row].list = out + (k - begin);
-      r[k - row].room = room;
-    }
+    next = group_gather(w->search, row, end, &walk);
+    w->near.frame = wend_frame_of(&walk);
     for (bool complete = false; !complete;) {
-      complete = vicinity_fill(s, &walk, v);
-      for (int32_t k = 0; k < next - row; k++) row_list(s, v, &v->leaves, &r[k]);
+      complete = wend_near_fill(&w->near, w->kit, &walk);
+      rows_list(w, row, next, lists + (row - begin));
     }
-    for (int32_t k = row; k < next; k++) count[k - begin] = r[k - row].count;
   }
 }
 
-/* Where lists go. */
-typedef struct output {
-  int32_t *index, *count;
-  int64_t *first, *used;
-  int64_t capacity;
-} output;
+/* Lays out what is near rows begin .. end - 1; false where they do not fit together or too much is
+ * near. */
+static bool group_fill(work *w, int32_t begin, int32_t end) {
+  wend_walk walk;
+  if (group_gather(w->search, begin, end, &walk) < end) return false;
+  w->near.frame = wend_frame_of(&walk);
+  return wend_near_fill(&w->near, w->kit, &walk);
+}
 
-/* Pads a slice and closes it; false where it did not fit. */
-static bool slice_close(const output *o, int32_t slice, int32_t rows, const int64_t *count) {
-  const int64_t room = (o->capacity - *o->used) / WEND_LANES;
-  int32_t *out = o->index + *o->used;
+/* Pads the lists of a slice to the longest and returns its width. */
+static int64_t slice_pad(list *lists, int32_t slice, int32_t rows) {
   int64_t width = 0;
   for (int lane = 0; lane < WEND_LANES; lane++)
-    width = count[lane] > width ? count[lane] : width;
-  if (width > room) return false;
-  for (int lane = 0; lane < WEND_LANES; lane++) {
-    const int32_t row = slice * WEND_LANES + lane;
-    for (int64_t m = count[lane]; m < width; m++)
-      out[WEND_LANES * m + lane] = row < rows ? row : rows - 1;
-    o->count[row] = (int32_t)count[lane];
+    width = lists[lane].count > width ? lists[lane].count : width;
+  for (int lane = 0; lane < WEND_LANES && width <= lists[0].room; lane++) {
+    const int32_t row = slice * WEND_LANES + lane, own = row < rows ? row : rows - 1;
+    for (int64_t m = lists[lane].count; m < width; m++)
+      lists[lane].at[WEND_LANES * m] = own;
   }
-  *o->used += WEND_LANES * width;
-  o->first[slice + 1] = *o->used;
-  return true;
+  return width;
 }
 
 int32_t wend_search_pairs(const wend_search *search, int32_t begin, int32_t *restrict index,
@@ -263,30 +141,28 @@ int32_t wend_search_pairs(const wend_search *search, int32_t begin, int32_t *res
                           int32_t *restrict count) {
   const int32_t rows = search->rows;
   const int32_t slices = rows / WEND_LANES + (rows % WEND_LANES != 0);
-  const output o = {index, count, first, used, capacity};
-  vicinity v;
-  int32_t together = begin; /* slices before this one are served by v */
+  work w = {.search = search, .kit = wend_near_kit_best()};
+  w.near.places = (wend_places){search->domain, search->tree, search->place, search->store};
+  w.near.mutual = true;
+  int32_t together = begin; /* slices below this one are served by what is laid out */
   for (int32_t slice = begin; slice < slices; slice++) {
-    const int32_t row = slice * WEND_LANES;
-    const int32_t end = rows - row < WEND_LANES ? rows : row + WEND_LANES;
-    if (slice == together) {
-      const int32_t last =
-          rows - row < GROUP_SLICES * WEND_LANES ? rows : row + GROUP_SLICES * WEND_LANES;
-      wend_walk walk;
-      const int32_t next = group_gather(search, row, last, &walk);
-      v.frame = wend_frame_of(&walk);
-      if (next == last && vicinity_fill(search, &walk, &v)) together = slice + GROUP_SLICES;
-    }
-    int64_t n[WEND_LANES] = {0};
-    int32_t *out = index + *used;
-    const int64_t room = (capacity - *used) / WEND_LANES;
-    if (slice < together) {
-      slice_list(search, &v, row, end, out, room, n);
-    } else {
-      slice_list_apart(search, &v, row, end, out, room, n);
-      together = slice + 1;
-    }
-    if (!slice_close(&o, slice, rows, n)) return slice;
+    const int32_t row = slice * WEND_LANES, left = rows - row;
+    const int32_t end = left < WEND_LANES ? rows : row + WEND_LANES;
+    const int32_t group = left < GROUP_SLICES * WEND_LANES ? left : GROUP_SLICES * WEND_LANES;
+    if (slice >= together && group_fill(&w, row, row + group)) together = slice + GROUP_SLICES;
+    list lists[WEND_LANES];
+    for (int lane = 0; lane < WEND_LANES; lane++)
+      lists[lane] = (list){index + *used + lane, (capacity - *used) / WEND_LANES, 0};
+    if (slice < together)
+      rows_list(&w, row, end, lists);
+    else
+      slice_list_apart(&w, row, end, lists);
+    const int64_t width = slice_pad(lists, slice, rows);
+    if (width > lists[0].room) return slice;
+    for (int lane = 0; lane < WEND_LANES; lane++)
+      count[WEND_LANES * slice + lane] = (int32_t)lists[lane].count;
+    *used += WEND_LANES * width;
+    first[slice + 1] = *used;
   }
   return slices;
 }

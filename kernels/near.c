@@ -1,0 +1,183 @@
+/* SPDX-License-Identifier: LGPL-3.0-or-later
+ * near.c: the particles near a group: layout, exact predicate, and the portable kit. */
+#include "near.h"
+
+#include <stddef.h>
+#include <string.h>
+
+/* r^2 of two places, unshifted positions and minimum image. */
+static inline double distance2(const wend_domain *d, const double *a, const double *b) {
+  double r2 = 0.0;
+  for (int axis = 0; axis < 3; axis++) {
+    const double dx = wend_domain_wrap(d, axis, b[axis] - a[axis]);
+    r2 += dx * dx;
+  }
+  return r2;
+}
+
+unsigned wend_near_decide(const wend_near *near, const wend_member *m, int32_t slot,
+                          unsigned inside, unsigned close) {
+  const wend_places *p = &near->places;
+  const double *a = p->place[m->self];
+  for (int lane = 0; lane < WEND_LEAF; lane++) {
+    const int32_t j = near->origin[slot].leaf * WEND_LEAF + lane;
+    if (!(close >> lane & 1u)) continue;
+    inside &= ~(1u << lane);
+    if (j >= p->tree->n || (near->mutual && j == m->self)) continue;
+    const double *b = p->place[j], h = near->mutual && b[3] > a[3] ? b[3] : a[3];
+    inside |= (unsigned)(distance2(p->domain, a, b) < h * h) << lane;
+  }
+  return inside;
+}
+
+/* Particle j of the places to position `at`. */
+static inline void load_one(wend_near *near, const wend_origin *o, int32_t j, int32_t at,
+                            bool wraps) {
+  const double *place = near->places.place[j], scale = near->frame.scale;
+  for (int a = 0; a < 3; a++) {
+    const double dx = place[a] - o->at[a];
+    const double x = wraps ? wend_domain_wrap(near->places.domain, a, dx) : dx;
+    near->x[a][at] = (float)(x * scale);
+  }
+  const double q = near->mutual ? place[3] * scale : 0.0;
+  near->h2[at] = (float)(q * q);
+  near->slack[at] = (float)wend_frame_slack(&near->frame, q);
+  near->name[at] = near->places.name ? near->places.name[j] : j;
+}
+
+static void load_portable(wend_near *near, int32_t k) {
+  const wend_origin *o = &near->origin[k];
+  for (int32_t lane = 0; lane < WEND_LEAF; lane++)
+    load_one(near, o, o->leaf * WEND_LEAF + lane, k * WEND_LEAF + lane, false);
+}
+
+/* A leaf that straddles, or that is not full: ends with particles infinitely far away. */
+static void load_odd(wend_near *near, int32_t k) {
+  const wend_origin *o = &near->origin[k];
+  const int32_t begin = o->leaf * WEND_LEAF, left = near->places.tree->n - begin;
+  for (int32_t lane = 0; lane < WEND_LEAF; lane++) {
+    const int32_t at = k * WEND_LEAF + lane;
+    load_one(near, o, lane < left ? begin + lane : begin, at, o->straddles);
+    if (lane >= left) near->x[0][at] = INFINITY;
+  }
+}
+
+bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk) {
+  wend_leaves_collect(walk, &near->frame, &near->leaves, near->origin);
+  for (int32_t k = 0; k < near->leaves.n; k++) {
+    const bool full = near->places.tree->n / WEND_LEAF > near->origin[k].leaf;
+    if (full && !near->origin[k].straddles)
+      kit->load(near, k);
+    else
+      load_odd(near, k);
+  }
+  return walk->level < 0;
+}
+
+wend_member wend_near_member(const wend_near *near, int32_t self) {
+  const wend_frame *f = &near->frame;
+  const double *place = near->places.place[self], q = place[3] * f->scale;
+  wend_member m = {.self = self, .h2 = (float)(q * q)};
+  for (int a = 0; a < 3; a++) m.x[a] = (float)((place[a] - f->centre[a]) * f->scale);
+  return m;
+}
+
+/* Distance of a box from the interval [lo, hi] on one axis. */
+static inline float gap(float box_lo, float box_hi, float lo, float hi) {
+  const float below = box_lo - hi, above = lo - box_hi;
+  const float d = below > above ? below : above;
+  return d > 0.0f ? d : 0.0f;
+}
+
+/* Marks the leaves that reach a box. */
+static void reaches(const wend_leaves *restrict v, const float *restrict lo,
+                    const float *restrict hi, float h2, int32_t *restrict near) {
+  for (int32_t k = 0; k < v->n; k++) {
+    const float x = gap(v->lo[0][k], v->hi[0][k], lo[0], hi[0]);
+    const float y = gap(v->lo[1][k], v->hi[1][k], lo[1], hi[1]);
+    const float z = gap(v->lo[2][k], v->hi[2][k], lo[2], hi[2]);
+    const float r2 = v->reach2[k] > h2 ? v->reach2[k] : h2;
+    near[k] = !(x * x + y * y + z * z - r2 > v->slack[k]);
+  }
+}
+
+static void narrow_portable(const wend_leaves *restrict from, const float lo[3],
+                            const float hi[3], float h2, wend_leaves *restrict to) {
+  int32_t near[WEND_NEAR_LEAVES], m = 0;
+  reaches(from, lo, hi, h2, near);
+  for (int32_t k = 0; k < from->n; k++) {
+    to->slot[m] = from->slot[k];
+    to->reach2[m] = from->reach2[k];
+    to->slack[m] = from->slack[k];
+    for (int a = 0; a < 3; a++) {
+      to->lo[a][m] = from->lo[a][k];
+      to->hi[a][m] = from->hi[a][k];
+    }
+    m += near[k];
+  }
+  to->n = m;
+}
+
+static int32_t choose_portable(const wend_leaves *leaves, const wend_member *m,
+                               int32_t *restrict list) {
+  int32_t near[WEND_NEAR_LEAVES], n = 0;
+  reaches(leaves, m->x, m->x, m->h2, near);
+  for (int32_t k = 0; k < leaves->n; k++) {
+    list[n] = leaves->slot[k];
+    n += near[k];
+  }
+  return n;
+}
+
+/* d = r^2 - H^2 of the particles of one leaf; tells whether any is too close to call. */
+static inline int compare(const wend_near *restrict near, int32_t at, const wend_member *m,
+                          float *restrict d, int32_t *restrict close) {
+  int any = 0;
+#pragma GCC unroll 1 /* else gcc unrolls first and then finds nothing to vectorise */
+  for (int32_t j = 0; j < WEND_LEAF; j++) {
+    const float x = near->x[0][at + j] - m->x[0];
+    const float y = near->x[1][at + j] - m->x[1];
+    const float z = near->x[2][at + j] - m->x[2];
+    const float h2 = near->h2[at + j] > m->h2 ? near->h2[at + j] : m->h2;
+    d[j] = x * x + y * y + z * z - h2;
+    close[j] = !(fabsf(d[j]) > near->slack[at + j]);
+    any |= close[j];
+  }
+  return any;
+}
+
+static int32_t sieve_portable(const wend_near *near, const wend_member *m, int32_t n,
+                              const int32_t *restrict slot, int32_t *restrict hits) {
+  int32_t count = 0;
+  for (int32_t k = 0; k < n; k++) {
+    const int32_t at = slot[k] * WEND_LEAF;
+    float d[WEND_LEAF];
+    int32_t close[WEND_LEAF];
+    if (compare(near, at, m, d, close)) {
+      unsigned mask = 0;
+      for (int lane = 0; lane < WEND_LEAF; lane++) mask |= (unsigned)close[lane] << lane;
+      mask = wend_near_decide(near, m, slot[k], 0u, mask);
+      for (int lane = 0; lane < WEND_LEAF; lane++)
+        d[lane] = close[lane] ? (mask >> lane & 1u ? -1.0f : 1.0f) : d[lane];
+    }
+    for (int lane = 0; lane < WEND_LEAF; lane++) {
+      uint32_t sign;
+      memcpy(&sign, &d[lane], sizeof sign);
+      hits[count] = near->name[at + lane];
+      count += (int32_t)(sign >> 31);
+    }
+  }
+  return count;
+}
+
+static const wend_near_kit portable = {"portable", load_portable, narrow_portable,
+                                       choose_portable, sieve_portable};
+
+const wend_near_kit *wend_near_kit_at(int k) {
+  return k == 0 ? &portable : k == 1 ? wend_near_kit_avx2() : NULL;
+}
+
+const wend_near_kit *wend_near_kit_best(void) {
+  const wend_near_kit *kit = wend_near_kit_avx2();
+  return kit ? kit : &portable;
+}
