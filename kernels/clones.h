@@ -12,7 +12,7 @@
 #include <limits.h> /* lets the C library say who it is */
 
 #if defined(__x86_64__) && defined(__GLIBC__) && !defined(__AVX2__) &&                         \
-    (defined(__clang__) ? __clang_major__ >= 14 : __GNUC__ >= 9)
+    !defined(WEND_PORTABLE) && (defined(__clang__) ? __clang_major__ >= 14 : __GNUC__ >= 9)
 #define WEND_CLONES __attribute__((target_clones("default", "avx2")))
 #else
 #define WEND_CLONES

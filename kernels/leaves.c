@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * leaves.c: the leaves near a group of particles, in single precision about the group's centre. */
+ * leaves.c: the leaves near a group of particles, in single precision about the group's centre.
+ */
 #include "leaves.h"
 
 /* Beyond this scaled radius squares leave the range of float. */
@@ -23,8 +24,9 @@ wend_frame wend_frame_of(const wend_walk *w) {
   return f;
 }
 
-/* Moves the origin of a leaf on one axis to the image nearest the leaf. Corners lo and hi are those
- * of the nearest image, or the whole axis where members of the leaf differ in their nearest image. */
+/* Moves the origin of a leaf on one axis to the image nearest the leaf. Corners lo and hi are
+ * those of the nearest image, or the whole axis where members of the leaf differ in their
+ * nearest image. */
 static void leaf_image(const wend_walk *w, const wend_frame *f, int axis, wend_origin *origin,
                        float *restrict lo, float *restrict hi) {
   const double half = 0.5 * w->period[axis], centre = f->centre[axis];
@@ -49,8 +51,7 @@ void wend_leaves_collect(wend_walk *w, const wend_frame *f, wend_leaves *leaves,
     origin[n] = (wend_origin){.leaf = leaf};
     for (int a = 0; a < 3; a++)
       leaf_image(w, f, a, &origin[n], &leaves->lo[a][n], &leaves->hi[a][n]);
-    for (int a = 0; a < 3 && origin[n].straddles; a++)
-      origin[n].at[a] = f->centre[a];
+    for (int a = 0; a < 3 && origin[n].straddles; a++) origin[n].at[a] = f->centre[a];
   }
   leaves->n = n;
 }

@@ -3,11 +3,12 @@
  *
  * Lengths are in units of the group's largest radius. Single precision halves the work of a
  * comparison; what it cannot decide is left to double precision: every box and particle has a
- * slack, a bound on the round-off of r^2 - H^2, and only differences beyond it are decided. With
- * s = (diameter of the group) + (larger radius), coordinates that matter are below s, so that
- * r^2 - H^2 is wrong by less than 14 x 2^-24 s^2; 2^-19 s^2 is used, and the round-off of positions
- * in double precision is added. Beyond s the relative error of r^2 stays as small. The slack is
- * infinite where nothing can be said: in groups so wide that nearest images differ in them. */
+ * slack, a bound on the round-off of r^2 - H^2, and only differences beyond it are decided.
+ * With s = (diameter of the group) + (larger radius), coordinates that matter are below s, so
+ * that r^2 - H^2 is wrong by less than 14 x 2^-24 s^2; 2^-19 s^2 is used, and the round-off of
+ * positions in double precision is added. Beyond s the relative error of r^2 stays as small.
+ * The slack is infinite where nothing can be said: in groups so wide that nearest images differ
+ * in them. */
 #ifndef WEND_KERNELS_LEAVES_H
 #define WEND_KERNELS_LEAVES_H
 

@@ -5,6 +5,9 @@
 #include <stddef.h>
 #include <string.h>
 
+#define GROUP_EXTENT 4.0 /* a group is no wider than so many of its smallest radius, ... */
+#define GROUP_RATIO 4.0  /* ... and its radii differ by no more than this factor */
+
 /* r^2 of two places, unshifted positions and minimum image. */
 static inline double distance2(const wend_domain *d, const double *a, const double *b) {
   double r2 = 0.0;
@@ -62,7 +65,28 @@ static void load_odd(wend_near *near, int32_t k) {
   }
 }
 
-bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk) {
+int32_t wend_near_gather(const wend_near *near, int32_t n, const int32_t *member,
+                         wend_walk *walk) {
+  const wend_places *p = &near->places;
+  *walk = wend_walk_begin(p->tree, p->domain, near->mutual);
+  double smallest = INFINITY;
+  for (int32_t k = 0; k < n; k++) {
+    const double *place = p->place[member[k]];
+    wend_walk wider = *walk;
+    wend_walk_add(&wider, place);
+    smallest = place[3] < smallest ? place[3] : smallest;
+    double extent = 0.0;
+    for (int a = 0; a < 3; a++) extent = fmax(extent, wider.hi[a] - wider.lo[a]);
+    const bool fits =
+        extent <= GROUP_EXTENT * smallest && wider.reach <= GROUP_RATIO * smallest;
+    if (k > 0 && !fits) return k;
+    *walk = wider;
+  }
+  return n;
+}
+
+bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk, bool begin) {
+  if (begin) near->frame = wend_frame_of(walk);
   wend_leaves_collect(walk, &near->frame, &near->leaves, near->origin);
   for (int32_t k = 0; k < near->leaves.n; k++) {
     const bool full = near->places.tree->n / WEND_LEAF > near->origin[k].leaf;
@@ -80,6 +104,21 @@ wend_member wend_near_member(const wend_near *near, int32_t self) {
   wend_member m = {.self = self, .h2 = (float)(q * q)};
   for (int a = 0; a < 3; a++) m.x[a] = (float)((place[a] - f->centre[a]) * f->scale);
   return m;
+}
+
+void wend_near_narrow(const wend_near *near, const wend_near_kit *kit, int32_t n,
+                      const int32_t *self, wend_member *member, wend_leaves *leaves) {
+  member[0] = wend_near_member(near, self[0]);
+  wend_member lo = member[0], hi = member[0];
+  for (int32_t k = 1; k < n; k++) {
+    const wend_member m = member[k] = wend_near_member(near, self[k]);
+    for (int a = 0; a < 3; a++) {
+      lo.x[a] = m.x[a] < lo.x[a] ? m.x[a] : lo.x[a];
+      hi.x[a] = m.x[a] > hi.x[a] ? m.x[a] : hi.x[a];
+    }
+    hi.h2 = m.h2 > hi.h2 ? m.h2 : hi.h2;
+  }
+  kit->narrow(&near->leaves, lo.x, hi.x, hi.h2, leaves);
 }
 
 /* Distance of a box from the interval [lo, hi] on one axis. */
@@ -170,8 +209,15 @@ static int32_t sieve_portable(const wend_near *near, const wend_member *m, int32
   return count;
 }
 
-static const wend_near_kit portable = {"portable", load_portable, narrow_portable,
-                                       choose_portable, sieve_portable};
+static void distances_portable(const wend_places *p, int32_t self, int32_t n,
+                               const int32_t *restrict number, double *restrict r) {
+  for (int32_t k = 0; k < n; k++)
+    r[k] = distance2(p->domain, p->place[self], p->place[number[k]]);
+  for (int32_t k = 0; k < n; k++) r[k] = sqrt(r[k]);
+}
+
+static const wend_near_kit portable = {"portable",      load_portable,  narrow_portable,
+                                       choose_portable, sieve_portable, distances_portable};
 
 const wend_near_kit *wend_near_kit_at(int k) {
   return k == 0 ? &portable : k == 1 ? wend_near_kit_avx2() : NULL;

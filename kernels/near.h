@@ -35,6 +35,9 @@ typedef struct wend_near {
   int32_t name[WEND_NEAR];
 } wend_near;
 
+/** How many rows are served together, at most. */
+#define WEND_GROUP 64
+
 /** A member of the group, scaled and about the centre. */
 typedef struct wend_member {
   int32_t self; /**< number among the places */
@@ -54,6 +57,10 @@ typedef struct wend_near_kit {
    * to hits [WEND_NEAR + 8], in order. Returns their number. */
   int32_t (*sieve)(const wend_near *near, const wend_member *m, int32_t n,
                    const int32_t *restrict slot, int32_t *restrict hits);
+  /** Distances r[n] of places by their numbers from a member, in double precision: the same
+   * bits from both ends. */
+  void (*distances)(const wend_places *places, int32_t self, int32_t n,
+                    const int32_t *restrict number, double *restrict r);
 } wend_near_kit;
 
 /** The k-th kit this processor can use, k = 0, 1, ...: the portable one, then faster ones; NULL
@@ -66,11 +73,24 @@ const wend_near_kit *wend_near_kit_best(void);
 /** The kit for 256-bit vectors; NULL where the processor or the compiler has none. Local. */
 const wend_near_kit *wend_near_kit_avx2(void);
 
-/** Fills `near` from a walk until it ends or no more fits; false where some is left. Local. */
-bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk);
+/** Begins a walk for the first of n members (numbers among the places), and as many after it as
+ *  fit together: near each other in terms of their radii, which do not differ much. Returns how
+ *  many. Local. */
+int32_t wend_near_gather(const wend_near *near, int32_t n, const int32_t *member,
+                         wend_walk *walk);
 
-/** A member of the group of the frame. Local. */
+/** Lays out what is near the group of a walk; the walk may end before, where no more fits.
+ * Tells whether it is at its end; if not, call again (with begin false) for what is next.
+ * Local. */
+bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk, bool begin);
+
+/** A member of the group, by its number among the places. Local. */
 wend_member wend_near_member(const wend_near *near, int32_t self);
+
+/** Makes members [n] of some of the group, n > 0, by their numbers, and chooses the leaves that
+ * matter to any of them. Local. */
+void wend_near_narrow(const wend_near *near, const wend_near_kit *kit, int32_t n,
+                      const int32_t *self, wend_member *member, wend_leaves *leaves);
 
 /** Hides a particle from the sieve (INFINITY as x) or shows it again (its own x). Returns the
  *  former x; at < 0 does nothing. Local. */

@@ -167,8 +167,55 @@ AVX2 static int32_t sieve_avx2(const wend_near *near, const wend_member *m, int3
   return count;
 }
 
+/* Squares of the four coordinates' differences, nearest images, of a place from another. */
+typedef struct wide_domain {
+  __m256d period, half;
+} wide_domain;
+
+AVX2 static inline __m256d squares(const wide_domain *d, const double *place, __m256d from) {
+  const __m256d dx = _mm256_sub_pd(_mm256_loadu_pd(place), from);
+  const __m256d minus = _mm256_sub_pd(_mm256_setzero_pd(), d->half);
+  const __m256d up = _mm256_and_pd(_mm256_cmp_pd(dx, d->half, _CMP_GT_OQ), d->period);
+  const __m256d down = _mm256_and_pd(_mm256_cmp_pd(dx, minus, _CMP_LT_OQ), d->period);
+  const __m256d x = _mm256_sub_pd(dx, _mm256_sub_pd(up, down));
+  return _mm256_mul_pd(x, x);
+}
+
+/* Distances of four places: x^2 + y^2 + z^2 in this order. */
+AVX2 static inline __m256d four_distances(const wide_domain *d, const double *p0,
+                                          const double *p1, const double *p2, const double *p3,
+                                          __m256d from) {
+  const __m256d a = squares(d, p0, from), b = squares(d, p1, from);
+  const __m256d c = squares(d, p2, from), e = squares(d, p3, from);
+  const __m256d xz_low = _mm256_unpacklo_pd(a, b), y_low = _mm256_unpackhi_pd(a, b);
+  const __m256d xz_high = _mm256_unpacklo_pd(c, e), y_high = _mm256_unpackhi_pd(c, e);
+  const __m256d x = _mm256_permute2f128_pd(xz_low, xz_high, 0x20);
+  const __m256d z = _mm256_permute2f128_pd(xz_low, xz_high, 0x31);
+  const __m256d y = _mm256_permute2f128_pd(y_low, y_high, 0x20);
+  return _mm256_sqrt_pd(_mm256_add_pd(_mm256_add_pd(x, y), z));
+}
+
+AVX2 static void distances_avx2(const wend_places *p, int32_t self, int32_t n,
+                                const int32_t *restrict number, double *restrict r) {
+  const wend_domain *domain = p->domain;
+  const wide_domain d = {
+      _mm256_setr_pd(domain->period[0], domain->period[1], domain->period[2], 0.0),
+      _mm256_setr_pd(domain->half[0], domain->half[1], domain->half[2], INFINITY)};
+  const __m256d from = _mm256_loadu_pd(p->place[self]);
+  int32_t k = 0;
+  for (; k + 4 <= n; k += 4)
+    _mm256_storeu_pd(r + k,
+                     four_distances(&d, p->place[number[k]], p->place[number[k + 1]],
+                                    p->place[number[k + 2]], p->place[number[k + 3]], from));
+  for (; k < n; k++) {
+    const double *one = p->place[number[k]];
+    r[k] = _mm256_cvtsd_f64(four_distances(&d, one, one, one, one, from));
+  }
+}
+
 const wend_near_kit *wend_near_kit_avx2(void) {
-  static const wend_near_kit kit = {"avx2", load_avx2, narrow_avx2, choose_avx2, sieve_avx2};
+  static const wend_near_kit kit = {"avx2",      load_avx2,  narrow_avx2,
+                                    choose_avx2, sieve_avx2, distances_avx2};
   __builtin_cpu_init();
   return __builtin_cpu_supports("avx2") && __builtin_cpu_supports("popcnt") ? &kit : NULL;
 }

@@ -1,17 +1,15 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * search.c: lists of pairs, slice after slice.
  *
- * One walk serves a group of up to eight slices: the particles near the group are laid out once,
- * each slice narrows them down to the leaves that matter to it, each row again, and only then
- * are particles compared. Rows of very different supports, or far apart, are walked for by
+ * One walk serves a group of up to eight slices: the particles near the group are laid out
+ * once, each slice narrows them down to the leaves that matter to it, each row again, and only
+ * then are particles compared. Rows of very different supports, or far apart, are walked for by
  * themselves, so that a large support costs its own row only. */
 #include "search.h"
 
 #include "near.h"
 
-#define GROUP_SLICES 8
-#define GROUP_EXTENT 4.0 /* a group is no wider than so many of its smallest support, ... */
-#define GROUP_RATIO 4.0  /* ... and its supports differ by no more than this factor */
+#define GROUP_SLICES (WEND_GROUP / WEND_LANES)
 
 /* A search under way. */
 typedef struct work {
@@ -27,12 +25,11 @@ typedef struct list {
   int64_t count; /* places needed */
 } list;
 
-/* Number of the leaf in the collection that holds a particle, from a guess at or below it; -1 where
- * it is not there. */
+/* Number of the leaf in the collection that holds a particle, from a guess at or below it; -1
+ * where it is not there. */
 static int32_t slot_of(const wend_near *near, int32_t guess, int32_t self) {
   const int32_t leaf = self / WEND_LEAF, n = near->leaves.n;
-  while (guess < n && near->origin[guess].leaf < leaf)
-    guess++;
+  while (guess < n && near->origin[guess].leaf < leaf) guess++;
   return guess < n && near->origin[guess].leaf == leaf ? guess : -1;
 }
 
@@ -47,52 +44,15 @@ static void row_list(work *w, const wend_leaves *leaves, const wend_member *m, i
   wend_near_swap(&w->near, own, x);
   const int64_t left = list->room - list->count, kept = found < left ? found : left;
   int32_t *at = list->at + WEND_LANES * list->count;
-  for (int64_t k = 0; k < kept; k++)
-    at[WEND_LANES * k] = hits[k];
+  for (int64_t k = 0; k < kept; k++) at[WEND_LANES * k] = hits[k];
   list->count += found;
-}
-
-/* Gathers rows begin, begin + 1, ... into the group of a walk as long as they fit together; returns
- * the first that does not. */
-static int32_t group_gather(const wend_search *s, int32_t begin, int32_t end, wend_walk *walk) {
-  *walk = wend_walk_begin(s->tree, s->domain, true);
-  double smallest = INFINITY;
-  for (int32_t row = begin; row < end; row++) {
-    const double *place = s->place[s->row[row]];
-    wend_walk wider = *walk;
-    wend_walk_add(&wider, place);
-    smallest = place[3] < smallest ? place[3] : smallest;
-    double extent = 0.0;
-    for (int a = 0; a < 3; a++)
-      extent = fmax(extent, wider.hi[a] - wider.lo[a]);
-    const bool fits =
-        extent <= GROUP_EXTENT * smallest && wider.reach <= GROUP_RATIO * smallest;
-    if (row > begin && !fits) return row;
-    *walk = wider;
-  }
-  return end;
-}
-
-/* The leaves of the collection that matter to some members. */
-static void leaves_of(work *w, int32_t n, const wend_member *m, wend_leaves *leaves) {
-  wend_member lo = *m, hi = *m;
-  for (int32_t k = 1; k < n; k++) {
-    for (int a = 0; a < 3; a++) {
-      lo.x[a] = m[k].x[a] < lo.x[a] ? m[k].x[a] : lo.x[a];
-      hi.x[a] = m[k].x[a] > hi.x[a] ? m[k].x[a] : hi.x[a];
-    }
-    hi.h2 = m[k].h2 > hi.h2 ? m[k].h2 : hi.h2;
-  }
-  w->kit->narrow(&w->near.leaves, lo.x, hi.x, hi.h2, leaves);
 }
 
 /* Continues the lists of rows begin .. end - 1 of one slice, from what is near. */
 static void rows_list(work *w, int32_t begin, int32_t end, list *lists) {
   wend_member m[WEND_LANES];
   wend_leaves leaves;
-  for (int32_t row = begin; row < end; row++)
-    m[row - begin] = wend_near_member(&w->near, w->search->row[row]);
-  leaves_of(w, end - begin, m, &leaves);
+  wend_near_narrow(&w->near, w->kit, end - begin, w->search->row + begin, m, &leaves);
   int32_t slot = 0;
   for (int32_t row = begin; row < end; row++) {
     const int32_t own = slot_of(&w->near, slot, m[row - begin].self);
@@ -105,22 +65,19 @@ static void rows_list(work *w, int32_t begin, int32_t end, list *lists) {
 static void slice_list_apart(work *w, int32_t begin, int32_t end, list *lists) {
   for (int32_t row = begin, next; row < end; row = next) {
     wend_walk walk;
-    next = group_gather(w->search, row, end, &walk);
-    w->near.frame = wend_frame_of(&walk);
-    for (bool complete = false; !complete;) {
-      complete = wend_near_fill(&w->near, w->kit, &walk);
+    next = row + wend_near_gather(&w->near, end - row, w->search->row + row, &walk);
+    for (bool first = true, last = false; !last; first = false) {
+      last = wend_near_fill(&w->near, w->kit, &walk, first);
       rows_list(w, row, next, lists + (row - begin));
     }
   }
 }
 
-/* Lays out what is near rows begin .. end - 1; false where they do not fit together or too much is
- * near. */
-static bool group_fill(work *w, int32_t begin, int32_t end) {
+/* Lays out what is near n rows; false where they do not fit together or too much is near. */
+static bool group_fill(work *w, int32_t begin, int32_t n) {
   wend_walk walk;
-  if (group_gather(w->search, begin, end, &walk) < end) return false;
-  w->near.frame = wend_frame_of(&walk);
-  return wend_near_fill(&w->near, w->kit, &walk);
+  return wend_near_gather(&w->near, n, w->search->row + begin, &walk) == n &&
+         wend_near_fill(&w->near, w->kit, &walk, true);
 }
 
 /* Pads the lists of a slice to the longest and returns its width. */
@@ -130,8 +87,7 @@ static int64_t slice_pad(list *lists, int32_t slice, int32_t rows) {
     width = lists[lane].count > width ? lists[lane].count : width;
   for (int lane = 0; lane < WEND_LANES && width <= lists[0].room; lane++) {
     const int32_t row = slice * WEND_LANES + lane, own = row < rows ? row : rows - 1;
-    for (int64_t m = lists[lane].count; m < width; m++)
-      lists[lane].at[WEND_LANES * m] = own;
+    for (int64_t m = lists[lane].count; m < width; m++) lists[lane].at[WEND_LANES * m] = own;
   }
   return width;
 }
@@ -148,8 +104,8 @@ int32_t wend_search_pairs(const wend_search *search, int32_t begin, int32_t *res
   for (int32_t slice = begin; slice < slices; slice++) {
     const int32_t row = slice * WEND_LANES, left = rows - row;
     const int32_t end = left < WEND_LANES ? rows : row + WEND_LANES;
-    const int32_t group = left < GROUP_SLICES * WEND_LANES ? left : GROUP_SLICES * WEND_LANES;
-    if (slice >= together && group_fill(&w, row, row + group)) together = slice + GROUP_SLICES;
+    const int32_t group = left < WEND_GROUP ? left : WEND_GROUP;
+    if (slice >= together && group_fill(&w, row, group)) together = slice + GROUP_SLICES;
     list lists[WEND_LANES];
     for (int lane = 0; lane < WEND_LANES; lane++)
       lists[lane] = (list){index + *used + lane, (capacity - *used) / WEND_LANES, 0};

@@ -15,12 +15,13 @@
 double wend_support_level(double h);
 
 /** Solves N(H) = target from the n distances below `trial` (a level), in canonical order, self
- *  (r = 0) included. Returns H, or 0 where N(trial) < target. dim 2 or 3. Relative error 1e-12.
+ *  (r = 0) included; r is spoiled. Returns H, or 0 where N(trial) < target. dim 2 or 3.
+ * Relative error 1e-12.
  *
- *  Where coincident particles alone exceed the target at any radius (four in 3-D, three in
- * 2-D), H is the smallest level beyond the nearest distinct particle, or 0 where there is none.
- */
+ *  Where coincident particles alone exceed the target at any radius (four in 3-D, three in 2-D
+ *  with the usual targets), H is the smallest level beyond the nearest distinct particle, or 0
+ *  where there is none. */
 double wend_support_solve(const wend_smoothing *smoothing, int dim, double target, double trial,
-                          int32_t n, const double *restrict r);
+                          int32_t n, double *restrict r);
 
 #endif
