@@ -16,14 +16,16 @@ extern "C" {
 /** Status of every fallible call. Codes are only ever appended. */
 typedef enum wend_status {
   WEND_OK = 0,
-  WEND_ERR_ARGUMENT = 1,  /**< an argument is outside its documented range */
-  WEND_ERR_MEMORY = 2,    /**< an allocation failed */
-  WEND_ERR_MPI = 3,       /**< the message layer reported an error */
-  WEND_ERR_FILE = 4,      /**< a file could not be opened, read, written or understood */
-  WEND_ERR_SETUP = 5,     /**< the setup holds an unknown key, a wrong unit or an absurd value */
-  WEND_ERR_PARTICLES = 6, /**< the particles are unusable: NaN, duplicate id, negative mass... */
-  WEND_ERR_GEOMETRY = 7,  /**< supports, volumes or faces cannot be built on these particles */
-  WEND_ERR_STEP = 8       /**< no super-step, however short, keeps the bounds */
+  WEND_ERR_ARGUMENT = 1, /**< an argument is outside its documented range */
+  WEND_ERR_MEMORY = 2,   /**< an allocation failed */
+  WEND_ERR_MPI = 3,      /**< the message layer reported an error */
+  WEND_ERR_FILE = 4,     /**< a file could not be opened, read, written or understood */
+  WEND_ERR_SETUP = 5,    /**< the setup holds an unknown key, a wrong unit or an absurd value */
+  WEND_ERR_PARTICLES =
+      6,                 /**< the particles are unusable: NaN, duplicate id, negative mass... */
+  WEND_ERR_GEOMETRY = 7, /**< supports, volumes or faces cannot be built on these particles */
+  WEND_ERR_STEP = 8,     /**< no super-step, however short, keeps the bounds */
+  WEND_ERR_PROOF = 9     /**< a measured figure missed its bar */
 } wend_status;
 
 /** Names a status in a few lower-case words. Local; the text lives for ever. */

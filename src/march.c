@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * march.c: super-steps with error control, bounds and books.
  *
- * Unknowns are E and, where a surface is open, the energy escaped from each particle: one block each, advanced
- * by the same stages and thrown away together when an attempt fails. */
+ * Unknowns are E and, where a surface is open, the energy escaped from each particle: one block
+ * each, advanced by the same stages and thrown away together when an attempt fails. */
 #include "march.h"
 #include "stage.h"
 #include "total.h"
@@ -27,8 +27,7 @@ static wend_status compute_rate(wend_team *team, wend_march *m, const double *en
 /* Runs the stages of one attempt; the increments of all unknowns end in `latest`. */
 static wend_status run_stages(wend_team *team, wend_march *m, const wend_plan *plan) {
   wend_stage stage[WEND_STAGES_MOST + 1];
-  const wend_supertime *family =
-      plan->stages == 1 ? wend_supertime_find("euler") : m->family;
+  const wend_supertime *family = plan->stages == 1 ? wend_supertime_find("euler") : m->family;
   const int64_t n = block(m), all = n * m->unknowns;
   family->stages(plan->stages, stage);
   memset(m->older, 0, (size_t)all * sizeof *m->older);
@@ -104,18 +103,19 @@ wend_status wend_march_step(wend_team *team, wend_march *march, double until) {
   }
   wend_plan plan =
       wend_control_plan(&m->control, &m->settings, m->family, explicit_step, remaining);
+  double low, high;
   for (;;) {
-    double low, high;
     status = run_stages(team, m, &plan);
     if (status != WEND_OK) return status;
     range(team, m, m->trial, &low, &high);
     if (!within(m, low, high)) {
       if (wend_control_shorten(&m->control, &m->settings, m->family, explicit_step, &plan))
         continue;
-      wend_fail(team, WEND_ERR_STEP,
-                "a forward-Euler step of %g at time %g leaves the range [%g, %g] of the CR energy "
-                "density: it found %.17g to %.17g",
-                plan.step, m->time, m->low, m->high, low, high);
+      wend_fail(
+          team, WEND_ERR_STEP,
+          "a forward-Euler step of %g at time %g leaves the range [%g, %g] of the CR energy "
+          "density: it found %.17g to %.17g",
+          plan.step, m->time, m->low, m->high, low, high);
       return wend_agree(team);
     }
     status = compute_rate(team, m, m->trial, m->rate);
@@ -125,6 +125,8 @@ wend_status wend_march_step(wend_team *team, wend_march *march, double until) {
                            &plan))
       break;
   }
+  m->seen_low = fmin(m->seen_low, low);
+  m->seen_high = fmax(m->seen_high, high);
   accept(team, m, &plan, until, remaining);
   return WEND_OK;
 }
@@ -155,6 +157,8 @@ wend_status wend_march_init(wend_team *team, const wend_settings *settings,
   WEND_TRY(allocate(team, m));
   m->control = wend_control_begin(settings, transport->explicit_step);
   range(team, m, energy, &m->low, &m->high);
+  m->seen_low = m->low;
+  m->seen_high = m->high;
   if (!(m->low >= 0) || !(m->high < INFINITY))
     wend_fail(team, WEND_ERR_PARTICLES,
               "CR energy densities run from %g to %g: they must be finite and not negative",

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * march.h: marches the CR energies in time by super-steps, with error control, bounds and books. */
+ * march.h: marches the CR energies in time by super-steps, with error control, bounds and
+ * books. */
 #ifndef WEND_SRC_MARCH_H
 #define WEND_SRC_MARCH_H
 
@@ -11,30 +12,34 @@ typedef struct wend_march {
   wend_settings settings;
   const wend_supertime *family;
   wend_transport *transport;
-  double *energy;       /**< [owned] E, borrowed from the particles */
+  double *energy; /**< [owned] E, borrowed from the particles */
   double time;
-  int64_t steps;        /**< super-steps made */
-  int64_t stages;       /**< stages made, thrown-away ones included */
-  double low, high;     /**< range of e that may not be left */
+  int64_t steps;              /**< super-steps made */
+  int64_t stages;             /**< stages made, thrown-away ones included */
+  double low, high;           /**< range of e that may not be left */
+  double seen_low, seen_high; /**< range of e at the ends of all super-steps so far */
   wend_control control;
-  wend_plan last;       /**< the last super-step made */
-  double last_error;    /**< its estimated error, relative */
+  wend_plan last;    /**< the last super-step made */
+  double last_error; /**< its estimated error, relative */
   wend_ledger ledger;
-  int unknowns;         /**< E, and escaped energy where a surface is open */
-  bool rate_known;      /**< rate_0 belongs to the present energies */
+  int unknowns;    /**< E, and escaped energy where a surface is open */
+  bool rate_known; /**< rate_0 belongs to the present energies */
   double *rate_0, *rate, *latest, *older, *trial; /**< [unknowns][owned] work space */
 } wend_march;
 
-/** Prepares to march energies [owned] from `time`. Collective. The transport and the energies must outlive
- *  it. Negative or non-finite energies are an error (without particle id: check them where they are read). */
+/** Prepares to march energies [owned] from `time`. Collective. The transport and the energies
+ * must outlive it. Negative or non-finite energies are an error (without particle id: check
+ * them where they are read). */
 wend_status wend_march_init(wend_team *team, const wend_settings *settings,
                             wend_transport *transport, double *energy, double time,
                             wend_march *march);
 
-/** Makes one super-step, not beyond `until`; time becomes exactly `until` when it is reached. Collective.
+/** Makes one super-step, not beyond `until`; time becomes exactly `until` when it is reached.
+ * Collective.
  *
- *  Never returns e < 0 or e beyond the range at the start by more than 1e-13 of max |e|: the super-step is redone in
- *  shorter ones, down to forward Euler. WEND_ERR_STEP where even that fails; energies are then unchanged. */
+ *  Never returns e < 0 or e beyond the range at the start by more than 1e-13 of max |e|: the
+ * super-step is redone in shorter ones, down to forward Euler. WEND_ERR_STEP where even that
+ * fails; energies are then unchanged. */
 wend_status wend_march_step(wend_team *team, wend_march *march, double until);
 
 /** Frees the work space. Local. */

@@ -16,6 +16,7 @@ const char *wend_status_text(wend_status status) {
       [WEND_ERR_PARTICLES] = "unusable particles",
       [WEND_ERR_GEOMETRY] = "geometry cannot be built",
       [WEND_ERR_STEP] = "no step keeps the bounds",
+      [WEND_ERR_PROOF] = "a figure missed its bar",
   };
   const int known = (int)(sizeof text / sizeof text[0]);
   return (int)status >= 0 && (int)status < known ? text[status] : "unknown status";

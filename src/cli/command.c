@@ -6,6 +6,7 @@
 #include <string.h>
 
 static const wend_command table[] = {
+    {"run", "carry a setup file through to its outputs", wend_run_command},
     {NULL, NULL, NULL},
 };
 

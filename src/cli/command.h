@@ -28,4 +28,7 @@ const wend_command *wend_command_at(int k);
 int wend_command_usage(wend_team *team, const char *format, ...)
     __attribute__((format(printf, 2, 3)));
 
+/** The subcommands, one file each. Collective. */
+int wend_run_command(wend_team *team, int argc, char **argv);
+
 #endif

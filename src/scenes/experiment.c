@@ -21,8 +21,7 @@ wend_status wend_experiment_begin(wend_team *team, wend_experiment *experiment,
     place_of(x, i, place);
     x->particles.column[WEND_ENERGY][i] = density(place, problem) * x->geometry.volume[i];
   }
-  WEND_TRY(
-      wend_transport_init(team, &x->settings, &x->particles, &x->geometry, &x->transport));
+  WEND_TRY(wend_transport_init(team, &x->settings, &x->particles, &x->geometry, &x->transport));
   WEND_TRY(wend_march_init(team, &x->settings, &x->transport, x->particles.column[WEND_ENERGY],
                            0, &x->march));
 done:

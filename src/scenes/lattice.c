@@ -32,7 +32,8 @@ wend_status wend_lattice_fill(wend_team *team, const wend_domain *domain,
                               const wend_lattice *lattice, uint64_t mask,
                               wend_particles *particles) {
   const int64_t all = (int64_t)lattice->side[0] * lattice->side[1] * lattice->side[2];
-  const int64_t begin = all * team->rank / team->size, end = all * (team->rank + 1) / team->size;
+  const int64_t begin = all * team->rank / team->size,
+                end = all * (team->rank + 1) / team->size;
   mask |= 1u << WEND_X | 1u << WEND_Y | 1u << WEND_Z;
   wend_particles_init(team, particles, (int32_t)(end - begin), mask);
   const wend_status status = wend_agree(team);
@@ -50,5 +51,27 @@ wend_status wend_lattice_fill(wend_team *team, const wend_domain *domain,
           settle(domain, a, domain->lo[a] + (cell + 0.5 + push) * spacing);
     }
   }
+  return WEND_OK;
+}
+
+wend_status wend_lattice_join(wend_team *team, wend_particles *particles,
+                              const wend_particles *more) {
+  wend_particles all;
+  const int32_t n = particles->n, m = more->n;
+  wend_particles_init(team, &all, n + m, wend_particles_mask(particles));
+  const wend_status status = wend_agree(team);
+  if (status != WEND_OK) {
+    wend_particles_reset(&all);
+    return status;
+  }
+  for (int32_t i = 0; i < n + m; i++) {
+    const wend_particles *from = i < n ? particles : more;
+    const int32_t k = i < n ? i : i - n;
+    all.id[i] = from->id[k];
+    for (int c = 0; c < WEND_COLUMNS; c++)
+      if (all.column[c] != NULL) all.column[c][i] = from->column[c][k];
+  }
+  wend_particles_reset(particles);
+  *particles = all;
   return WEND_OK;
 }

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
- * random.h: random numbers that depend on a seed, an item and a channel only, not on ranks or order
- * (the finaliser of SplitMix64: Steele, Lea & Flood 2014). */
+ * random.h: random numbers that depend on a seed, an item and a channel only, not on ranks or
+ * order (the finaliser of SplitMix64: Steele, Lea & Flood 2014). */
 #ifndef WEND_SCENES_RANDOM_H
 #define WEND_SCENES_RANDOM_H
 
