@@ -42,6 +42,30 @@ wend_status wend_march_init(wend_team *team, const wend_settings *settings,
  * fails; energies are then unchanged. */
 wend_status wend_march_step(wend_team *team, wend_march *march, double until);
 
+/** Lengths of a saved state. */
+enum {
+  WEND_MARCH_NUMBERS = 9,
+  WEND_MARCH_COUNTS = 7 + WEND_CAUSES,
+  WEND_MARCH_LIMBS = (WEND_ACCOUNTS + 1) * WEND_SUM_LIMBS
+};
+
+/** What decides the future of a march, beside its energies: plain numbers for a checkpoint. The
+ * same on every rank. */
+typedef struct wend_march_state {
+  double number[WEND_MARCH_NUMBERS];
+  int64_t count[WEND_MARCH_COUNTS];
+  int64_t limb[WEND_MARCH_LIMBS]; /**< of the books */
+} wend_march_state;
+
+/** Writes down the state of a march between two super-steps. Local. */
+void wend_march_save(const wend_march *march, wend_march_state *state);
+/** Puts a march that was prepared with the energies of that moment into the saved state, and
+ * computes its rate. Collective. *same tells whether the explicit step is the saved one to the
+ * bit, as it is where geometry and coefficients are. Numbers that no march can have are
+ * WEND_ERR_ARGUMENT. */
+wend_status wend_march_restore(wend_team *team, wend_march *march,
+                               const wend_march_state *state, bool *same);
+
 /** Frees the work space. Local. */
 void wend_march_reset(wend_march *march);
 

@@ -16,7 +16,7 @@ work=$(mktemp -d)
 trap 'rm -rf "$work"' EXIT
 
 # Files that may speak MPI (any may read its clock, MPI_Wtime).
-talkers='^src/(team|cut|deal|ids|total|flight|post|halo[a-z_]*)\.[ch]$|^src/io/(setup|(particle_file|particle_patches|checkpoint|hdf)[a-z_]*)\.[ch]$|^src/cli/main\.c$|^tests/'
+talkers='^src/(team|cut|deal|ids|total|flight|post|halo[a-z_]*)\.[ch]$|^src/io/(setup|run_log|(particle_file|particle_patches|checkpoint|hdf)[a-z_]*)\.[ch]$|^src/cli/main\.c$|^tests/'
 
 # The layer a file belongs to.
 layer_of() {

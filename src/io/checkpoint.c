@@ -168,6 +168,17 @@ void *wend_checkpoint_global(wend_team *team, const wend_checkpoint *from, const
   return find(team, "global", from->globals, from->global, name, type, n);
 }
 
+void *wend_checkpoint_take(wend_checkpoint *from, const char *name, wend_value_type type) {
+  for (int k = 0; k < from->columns; k++) {
+    wend_checkpoint_item *item = &from->column[k];
+    if (strcmp(item->name, name) != 0 || item->type != type) continue;
+    void *const data = item->data;
+    item->data = NULL;
+    return data;
+  }
+  return NULL;
+}
+
 static void free_items(int n, wend_checkpoint_item *item) {
   for (int k = 0; k < n; k++) {
     free((char *)item[k].name);

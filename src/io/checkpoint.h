@@ -63,6 +63,10 @@ void *wend_checkpoint_column(wend_team *team, const wend_checkpoint *from, const
 void *wend_checkpoint_global(wend_team *team, const wend_checkpoint *from, const char *name,
                              wend_value_type type, int64_t n);
 
+/** Gives away the array of a column that was read, to be freed with free(); NULL where there is
+ * none of that name and type. Local, but the same on all ranks. */
+void *wend_checkpoint_take(wend_checkpoint *from, const char *name, wend_value_type type);
+
 /** Frees what read allocated and zeroes the struct. Local. */
 void wend_checkpoint_reset(wend_checkpoint *checkpoint);
 

@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * run.h: a run of the main job, from a setup and a particle file to the end time.
  *
- * Phases, in order: read (or restore), build, and then steps with outputs, books and
- * checkpoints; reset at the end, also after a failure. */
+ * Phases, in order: begin, read particles and build (or restore: run_state.h), and then steps
+ * with outputs, books and checkpoints; reset at the end, also after a failure. */
 #ifndef WEND_IO_RUN_H
 #define WEND_IO_RUN_H
 
@@ -34,18 +34,17 @@ typedef struct wend_run {
   double imbalance; /**< largest over mean of the ranks' pairs, as cut in the end */
 } wend_run;
 
-/** Reads setup and particle file, and checks that they fit each other. Collective.
- *  On failure what was read is left for wend_run_reset. */
-wend_status wend_run_read(wend_team *team, const char *path, wend_run *run);
-/** Reads the particle file that run->setup names. Collective. */
+/** Reads the setup of a run. Collective. */
+wend_status wend_run_begin(wend_team *team, const char *path, wend_run *run);
+/** Reads the particles that the setup names, and checks that they fit it. Collective. */
 wend_status wend_run_read_particles(wend_team *team, wend_run *run);
 
-/** Cuts the particles and builds geometry, transport and march from time `now`. Collective.
+/** Cuts the particles and builds geometry, transport and march from the start. Collective.
  *
  *  Ranks first get equal numbers of particles; where their pairs then differ by more than a few
  * per cent they are cut again by pairs. Supports and volumes that were used are columns
  * afterwards. */
-wend_status wend_run_build(wend_team *team, wend_run *run, double now);
+wend_status wend_run_build(wend_team *team, wend_run *run);
 
 /** Makes the folder of the outputs, with those above it, and checks that files can be made
  * there. Collective. */
@@ -60,6 +59,10 @@ wend_status wend_run_drop_outputs(wend_team *team, const wend_run *run, int64_t 
  * too long. Local. */
 wend_status wend_run_path(wend_team *team, const wend_run *run, size_t size, char *text,
                           const char *tail, ...) __attribute__((format(printf, 5, 6)));
+
+/** Writes FOLDER/NAME_run.log, what a reader needs to cite and to repeat the run: versions,
+ * setup, machine, ranks, date. A resumed run adds to it. Collective. */
+wend_status wend_run_write_log(wend_team *team, const wend_run *run, bool resumed);
 
 /** Frees all of it. Local. */
 void wend_run_reset(wend_run *run);

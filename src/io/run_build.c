@@ -76,7 +76,7 @@ static void finish_energies(wend_run *run) {
   run->energy_is_density = false;
 }
 
-wend_status wend_run_build(wend_team *team, wend_run *run, double now) {
+wend_status wend_run_build(wend_team *team, wend_run *run) {
   wend_status status;
   const wend_settings *settings = &run->setup.settings;
   WEND_TRY(wend_laws_apply(team, &run->setup, &run->particles));
@@ -86,7 +86,7 @@ wend_status wend_run_build(wend_team *team, wend_run *run, double now) {
       wend_transport_init(team, settings, &run->particles, &run->geometry, &run->transport));
   wend_laws_drop_constant(&run->setup, &run->particles);
   WEND_TRY(wend_march_init(team, settings, &run->transport, run->particles.column[WEND_ENERGY],
-                           now, &run->march));
+                           run->start, &run->march));
 done:
   return status;
 }

@@ -66,10 +66,9 @@ done:
   return status;
 }
 
-wend_status wend_run_read(wend_team *team, const char *path, wend_run *run) {
+wend_status wend_run_begin(wend_team *team, const char *path, wend_run *run) {
   memset(run, 0, sizeof *run);
-  const wend_status status = wend_setup_read(team, path, &run->setup);
-  return status == WEND_OK ? wend_run_read_particles(team, run) : status;
+  return wend_setup_read(team, path, &run->setup);
 }
 
 void wend_run_reset(wend_run *run) {
