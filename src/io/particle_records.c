@@ -18,7 +18,9 @@ enum { NAME_MOST = 256 };
 typedef struct component {
   hid_t object;
   bool constant;
-  double value, unit_si;
+  double value;
+  bool unit_given; /* ids need none */
+  double unit_si;
   int64_t length;
 } component;
 
@@ -71,9 +73,7 @@ static void open_component(wend_particle_reader *r, const char *path, component 
     c->length = wend_hdf_length(c->object);
     if (c->length < 0) wend_record_complain(r, path, "has more than one dimension");
   }
-  if (r->team->status == WEND_OK &&
-      !wend_hdf_get(&r->hdf, c->object, "unitSI", H5T_NATIVE_DOUBLE, 1, &c->unit_si))
-    wend_record_complain(r, path, "has no unitSI");
+  c->unit_given = wend_hdf_get(&r->hdf, c->object, "unitSI", H5T_NATIVE_DOUBLE, 1, &c->unit_si);
   if (r->team->status == WEND_OK && c->length != r->block.total && r->block.total >= 0)
     wend_record_complain(r, path, "has another length than position/x");
 }
@@ -91,6 +91,8 @@ static wend_status take_component(wend_particle_reader *r, const char *path,
   double *stored = NULL;
   const int64_t n = r->block.n;
   open_component(r, path, &c);
+  if (r->team->status == WEND_OK && !(c.unit_given && isfinite(c.unit_si)))
+    wend_record_complain(r, path, "has no unitSI");
   WEND_TRY(wend_agree(r->team));
   const double factor =
       c.unit_si / wend_units_scale(r->units, wend_quantity_find(quantity)->dimension);
