@@ -10,12 +10,15 @@
 #include "domain.h"
 #include "particles.h"
 
-/** Computes keys, moves particles to their owners and sorts them. Collective.
+/** Computes keys, moves particles to their owners and sorts them. Collective; the same status
+ * on all ranks, and whatever fails, the particles stay as they were.
  *
- *  weight [n] is the work of each particle (counted pairs + 1; NULL: one each), carried
- * nowhere. Positions must lie inside the domain (periodic ones in [lo, hi)). An id found twice,
- * on any two ranks, is WEND_ERR_PARTICLES and the message names it; the particles are then
- * unchanged. */
+ *  weight [n] is the work of each particle (counted pairs + 1; 0 counts as 1; NULL: one each),
+ * carried nowhere. Each boundary stands within half the weight of one key value of its level
+ * place; a rank may end up empty. WEND_ERR_PARTICLES: a place outside the domain (periodic
+ * axes: [lo, hi), others: [lo, hi]), an id used twice on any ranks (both named in the message),
+ * no particles at all, or more than 2^31 - 1 for one rank. WEND_ERR_ARGUMENT: no positions, or
+ * columns that differ between ranks. */
 wend_status wend_cut_particles(wend_team *team, const wend_domain *domain,
                                wend_particles *particles, const uint32_t *weight);
 
