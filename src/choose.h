@@ -14,7 +14,7 @@ typedef struct wend_chosen {
 } wend_chosen;
 
 /** Appends, ascending, every particle that may be a pair with one in any of the boxes. Local; a
- *  failing allocation or a list beyond 2^31 - 1 is recorded and returned. */
+ * failing allocation or a list beyond 2^31 - 1 is recorded and returned. */
 wend_status wend_choose(wend_team *team, const wend_domain *domain, const wend_tree *tree,
                         const double (*place)[4], int32_t boxes, const wend_box *box,
                         wend_chosen *chosen);

@@ -13,7 +13,7 @@
 /** Computes keys, moves particles to their owners and sorts them. Collective; the same status
  * on all ranks, and whatever fails, the particles stay as they were.
  *
- *  weight [n] is the work of each particle (counted pairs + 1; 0 counts as 1; NULL: one each),
+ * weight [n] is the work of each particle (counted pairs + 1; 0 counts as 1; NULL: one each),
  * carried nowhere. Each boundary stands within half the weight of one key value of its level
  * place; a rank may end up empty. WEND_ERR_PARTICLES: a place outside the domain (periodic
  * axes: [lo, hi), others: [lo, hi]), an id used twice on any ranks (both named in the message),

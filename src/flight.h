@@ -15,7 +15,7 @@ typedef struct wend_post {
 } wend_post;
 
 /** Starts all messages, post[k] with peer[k]; completes them. Collective among peers, allocate
- *  nothing; a failure is recorded and returned. */
+ * nothing; a failure is recorded and returned. */
 wend_status wend_post_begin(wend_team *team, int peers, const int *peer, wend_post *post,
                             MPI_Datatype type);
 wend_status wend_post_end(wend_team *team, int peers, wend_post *post);

@@ -26,21 +26,21 @@ typedef struct wend_halo {
 
 /** Finds the ghosts of owned particles. Collective.
  *
- *  place [owned][4]: x, y, z, H of this rank's particles in canonical order. The result may
+ * place [owned][4]: x, y, z, H of this rank's particles in canonical order. The result may
  * hold more ghosts than pairs need (boxes are used); wend_halo_trim drops the rest. Owned
  * particles must keep their order while the halo lives; the decomposition may be any (a rank
- *  may be empty, or own everything). The same status on all ranks: WEND_ERR_PARTICLES where a
+ * may be empty, or own everything). The same status on all ranks: WEND_ERR_PARTICLES where a
  * place is not finite or a support is negative; the halo is then empty. */
 wend_status wend_halo_build(wend_team *team, const wend_domain *domain, int32_t owned,
                             const double (*place)[4], wend_halo *halo);
 
 /** Keeps only the ghosts with used[g] true, g in [0, ghosts), on both sides. Collective.
- *  renumber [ghosts] receives the new ghost number of each kept ghost, -1 of a dropped one. */
+ * renumber [ghosts] receives the new ghost number of each kept ghost, -1 of a dropped one. */
 wend_status wend_halo_trim(wend_team *team, wend_halo *halo, const bool *used,
                            int32_t *renumber);
 
 /** Starts to fill the ghosts of a field: item i is `width` consecutive values at field + i *
- *  stride * size, `size` bytes each value (8 for double and uint64_t, 4 for float and int32_t),
+ * stride * size, `size` bytes each value (8 for double and uint64_t, 4 for float and int32_t),
  * at most 64 of them. Items [0, owned) are read at once and may change after the call, items
  * [owned, owned + ghosts) are written by the time `end` returns; what lies between items is not
  * touched. One exchange at a time. Collective among peers, who never wait for ever for a rank

@@ -8,7 +8,7 @@
 
 /** Finds the first key of each rank: rank r gets keys in [start[r], start[r + 1]). Collective.
  *
- *  key [n] ascending on this rank (any part of all keys), each below 2^63; before [n + 1]:
+ * key [n] ascending on this rank (any part of all keys), each below 2^63; before [n + 1]:
  * summed weight of the keys before each, before[n] that of all. start [size] is the same on
  * every rank and depends on keys and weights of the whole team only; each cut stands within
  * half the weight of one key value of its ideal place. The same status on all ranks. */
