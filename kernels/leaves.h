@@ -16,13 +16,14 @@
 
 #define WEND_NEAR_LEAVES 256 /* a multiple of 8 */
 
-/** Where a group stands. */
+/** Where a group stands, and what its members are measured by. */
 typedef struct wend_frame {
-  double centre[4]; /**< 4th: 0 */
-  double scale;     /**< 1 / largest radius of the group */
-  double spread;    /**< diameter, scaled */
-  double round;     /**< round-off of a position, scaled, with a margin */
-  double largest;   /**< scaled radius from which on nearest images cannot be trusted */
+  double centre[3];
+  double scale;           /**< 1 / largest radius of the group */
+  double spread;          /**< diameter, scaled */
+  double round;           /**< round-off of a position, scaled, with a margin */
+  double largest;         /**< scaled radius from which on nearest images cannot be trusted */
+  float lo[3], hi[3], h2; /**< box and squared radius of the group, scaled, about the centre */
 } wend_frame;
 
 /** Leaves by their boxes, in canonical order. */
@@ -34,13 +35,6 @@ typedef struct wend_leaves {
   float slack[WEND_NEAR_LEAVES];
 } wend_leaves;
 
-/** Where the members of a leaf are measured from. */
-typedef struct wend_origin {
-  double at[4];   /**< the group's centre, moved by periods; 4th: 0 */
-  int32_t leaf;   /**< number of the leaf in the tree */
-  bool straddles; /**< its members differ in which image is nearest; at is the centre */
-} wend_origin;
-
 /** Frame of the group of a walk. Local. */
 wend_frame wend_frame_of(const wend_walk *walk);
 
@@ -50,8 +44,10 @@ static inline double wend_frame_slack(const wend_frame *f, double q) {
   return radius < f->largest ? s * (0x1p-19 * s + f->round) : INFINITY;
 }
 
-/** Collects leaves from a walk until it ends or WEND_NEAR_LEAVES are there. Local. */
-void wend_leaves_collect(wend_walk *walk, const wend_frame *frame, wend_leaves *leaves,
-                         wend_origin origin[WEND_NEAR_LEAVES]);
+/** Where members of a box are to be measured from, so that its nearest image results: at [4],
+ * the centre moved by periods, 4th 0. False, and the centre itself, where members of the box
+ * differ in which image is nearest. Local. */
+bool wend_frame_image(const wend_frame *f, const wend_walk *walk, const double *lo,
+                      const double *hi, double *at);
 
 #endif

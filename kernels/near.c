@@ -23,7 +23,7 @@ unsigned wend_near_decide(const wend_near *near, const wend_member *m, int32_t s
   const wend_places *p = &near->places;
   const double *a = p->place[m->self];
   for (int lane = 0; lane < WEND_LEAF; lane++) {
-    const int32_t j = near->origin[slot].leaf * WEND_LEAF + lane;
+    const int32_t j = near->leaf[slot] * WEND_LEAF + lane;
     if (!(close >> lane & 1u)) continue;
     inside &= ~(1u << lane);
     if (j >= p->tree->n || (near->mutual && j == m->self)) continue;
@@ -33,35 +33,35 @@ unsigned wend_near_decide(const wend_near *near, const wend_member *m, int32_t s
   return inside;
 }
 
-/* Particle j of the places to position `at`. */
-static inline void load_one(wend_near *near, const wend_origin *o, int32_t j, int32_t at,
+/* Particle j of the places to position `to`, measured from `at`. */
+static inline void load_one(wend_near *near, const double *at, int32_t j, int32_t to,
                             bool wraps) {
   const double *place = near->places.place[j], scale = near->frame.scale;
   for (int a = 0; a < 3; a++) {
-    const double dx = place[a] - o->at[a];
+    const double dx = place[a] - at[a];
     const double x = wraps ? wend_domain_wrap(near->places.domain, a, dx) : dx;
-    near->x[a][at] = (float)(x * scale);
+    near->x[a][to] = (float)(x * scale);
   }
   const double q = near->mutual ? place[3] * scale : 0.0;
-  near->h2[at] = (float)(q * q);
-  near->slack[at] = (float)wend_frame_slack(&near->frame, q);
-  near->name[at] = near->places.name ? near->places.name[j] : j;
+  near->h2[to] = (float)(q * q);
+  near->slack[to] = (float)wend_frame_slack(&near->frame, q);
+  near->name[to] = near->places.name ? near->places.name[j] : j;
 }
 
 static void load_portable(wend_near *near, int32_t k) {
-  const wend_origin *o = &near->origin[k];
+  const double *at = near->at[near->origin[k]];
   for (int32_t lane = 0; lane < WEND_LEAF; lane++)
-    load_one(near, o, o->leaf * WEND_LEAF + lane, k * WEND_LEAF + lane, false);
+    load_one(near, at, near->leaf[k] * WEND_LEAF + lane, k * WEND_LEAF + lane, false);
 }
 
 /* A leaf that straddles, or that is not full: ends with particles infinitely far away. */
 static void load_odd(wend_near *near, int32_t k) {
-  const wend_origin *o = &near->origin[k];
-  const int32_t begin = o->leaf * WEND_LEAF, left = near->places.tree->n - begin;
+  const int32_t begin = near->leaf[k] * WEND_LEAF, left = near->places.tree->n - begin;
+  const int32_t origin = near->origin[k];
   for (int32_t lane = 0; lane < WEND_LEAF; lane++) {
-    const int32_t at = k * WEND_LEAF + lane;
-    load_one(near, o, lane < left ? begin + lane : begin, at, o->straddles);
-    if (lane >= left) near->x[0][at] = INFINITY;
+    const int32_t to = k * WEND_LEAF + lane, j = lane < left ? begin + lane : begin;
+    load_one(near, near->at[origin], j, to, near->straddles[origin]);
+    if (lane >= left) near->x[0][to] = INFINITY;
   }
 }
 
@@ -83,19 +83,6 @@ int32_t wend_near_gather(const wend_near *near, int32_t n, const int32_t *member
     *walk = wider;
   }
   return n;
-}
-
-bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk, bool begin) {
-  if (begin) near->frame = wend_frame_of(walk);
-  wend_leaves_collect(walk, &near->frame, &near->leaves, near->origin);
-  for (int32_t k = 0; k < near->leaves.n; k++) {
-    const bool full = near->places.tree->n / WEND_LEAF > near->origin[k].leaf;
-    if (full && !near->origin[k].straddles)
-      kit->load(near, k);
-    else
-      load_odd(near, k);
-  }
-  return walk->level < 0;
 }
 
 wend_member wend_near_member(const wend_near *near, int32_t self) {
@@ -128,16 +115,95 @@ static inline float gap(float box_lo, float box_hi, float lo, float hi) {
   return d > 0.0f ? d : 0.0f;
 }
 
+/* Whether leaf k reaches a box. */
+static inline int reaches_one(const wend_leaves *restrict v, int32_t k,
+                              const float *restrict lo, const float *restrict hi, float h2) {
+  const float x = gap(v->lo[0][k], v->hi[0][k], lo[0], hi[0]);
+  const float y = gap(v->lo[1][k], v->hi[1][k], lo[1], hi[1]);
+  const float z = gap(v->lo[2][k], v->hi[2][k], lo[2], hi[2]);
+  const float r2 = v->reach2[k] > h2 ? v->reach2[k] : h2;
+  return !(x * x + y * y + z * z - r2 > v->slack[k]);
+}
+
 /* Marks the leaves that reach a box. */
 static void reaches(const wend_leaves *restrict v, const float *restrict lo,
                     const float *restrict hi, float h2, int32_t *restrict near) {
-  for (int32_t k = 0; k < v->n; k++) {
-    const float x = gap(v->lo[0][k], v->hi[0][k], lo[0], hi[0]);
-    const float y = gap(v->lo[1][k], v->hi[1][k], lo[1], hi[1]);
-    const float z = gap(v->lo[2][k], v->hi[2][k], lo[2], hi[2]);
-    const float r2 = v->reach2[k] > h2 ? v->reach2[k] : h2;
-    near[k] = !(x * x + y * y + z * z - r2 > v->slack[k]);
+  for (int32_t k = 0; k < v->n; k++) near[k] = reaches_one(v, k, lo, hi, h2);
+}
+
+/* Adds one leaf to the end of the collection, whether it reaches the group or not. */
+static void leaf_add(wend_near *near, int32_t leaf) {
+  wend_leaves *to = &near->leaves;
+  const wend_frame *f = &near->frame;
+  const double *lo = near->places.tree->lo[leaf], *hi = near->places.tree->hi[leaf];
+  const double *at = near->at[near->origins];
+  const bool straddles = near->straddles[near->origins];
+  const int32_t n = to->n++;
+  for (int a = 0; a < 3; a++) {
+    to->lo[a][n] = straddles ? -INFINITY : (float)((lo[a] - at[a]) * f->scale);
+    to->hi[a][n] = straddles ? INFINITY : (float)((hi[a] - at[a]) * f->scale);
   }
+  const double q = near->mutual ? lo[3] * f->scale : 0.0;
+  to->reach2[n] = (float)(q * q);
+  to->slack[n] = (float)wend_frame_slack(f, q);
+  to->slot[n] = n;
+  near->leaf[n] = leaf;
+  near->origin[n] = near->origins;
+}
+
+static void collect_portable(wend_near *near, int32_t leaf) {
+  for (int32_t k = 0; k < WEND_FAN; k++) {
+    const int32_t last = near->leaves.n;
+    leaf_add(near, leaf + k);
+    near->leaves.n -=
+        !reaches_one(&near->leaves, last, near->frame.lo, near->frame.hi, near->frame.h2);
+  }
+}
+
+/* Adds leaves one by one: a branch that is not full, or whose leaves differ in their image. */
+static void collect_odd(wend_near *near, const wend_walk *w, int32_t leaf, int32_t n) {
+  for (int32_t k = leaf; k < leaf + n; k++) {
+    const bool same = wend_frame_image(&near->frame, w, w->tree->lo[k], w->tree->hi[k],
+                                       near->at[near->origins]);
+    near->straddles[near->origins] = !same;
+    leaf_add(near, k);
+    near->origins++;
+  }
+}
+
+/* Collects leaves until the walk ends or no branch more fits. */
+static void collect(wend_near *near, const wend_near_kit *kit, wend_walk *w) {
+  const wend_tree *t = w->tree;
+  const int32_t leaves = t->levels > 0 ? t->offset[1] : 0;
+  near->leaves.n = near->origins = 0;
+  for (int32_t branch;
+       near->leaves.n + WEND_FAN <= WEND_NEAR_LEAVES && (branch = wend_walk_next(w)) >= 0;) {
+    const int32_t box = t->offset[w->floor] + branch, leaf = branch * WEND_FAN;
+    const int32_t n = leaves - leaf < WEND_FAN ? leaves - leaf : WEND_FAN;
+    const bool same =
+        wend_frame_image(&near->frame, w, t->lo[box], t->hi[box], near->at[near->origins]);
+    near->straddles[near->origins] = false;
+    const int32_t before = near->leaves.n;
+    if (n < WEND_FAN || !same) {
+      collect_odd(near, w, leaf, n);
+    } else {
+      kit->collect(near, leaf);
+      near->origins += near->leaves.n > before;
+    }
+  }
+}
+
+bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk, bool begin) {
+  if (begin) near->frame = wend_frame_of(walk);
+  collect(near, kit, walk);
+  for (int32_t k = 0; k < near->leaves.n; k++) {
+    const bool full = near->places.tree->n / WEND_LEAF > near->leaf[k];
+    if (full && !near->straddles[near->origin[k]])
+      kit->load(near, k);
+    else
+      load_odd(near, k);
+  }
+  return walk->level < 0;
 }
 
 static void narrow_portable(const wend_leaves *restrict from, const float lo[3],
@@ -216,8 +282,10 @@ static void distances_portable(const wend_places *p, int32_t self, int32_t n,
   for (int32_t k = 0; k < n; k++) r[k] = sqrt(r[k]);
 }
 
-static const wend_near_kit portable = {"portable",      load_portable,  narrow_portable,
-                                       choose_portable, sieve_portable, distances_portable};
+static const wend_near_kit portable = {
+    "portable",      collect_portable, load_portable,      narrow_portable,
+    choose_portable, sieve_portable,   distances_portable,
+};
 
 const wend_near_kit *wend_near_kit_at(int k) {
   return k == 0 ? &portable : k == 1 ? wend_near_kit_avx2() : NULL;

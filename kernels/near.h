@@ -28,9 +28,13 @@ typedef struct wend_near {
   bool mutual;
   wend_frame frame;
   wend_leaves leaves;
-  wend_origin origin[WEND_NEAR_LEAVES];
-  float x[3][WEND_NEAR]; /**< scaled, about the centre; INFINITY: nobody */
-  float h2[WEND_NEAR];   /**< 0 if not mutual */
+  int32_t leaf[WEND_NEAR_LEAVES];   /**< numbers of the leaves in the tree */
+  int32_t origin[WEND_NEAR_LEAVES]; /**< which of `at` they are measured from */
+  int32_t origins;
+  double at[WEND_NEAR_LEAVES][4];
+  bool straddles[WEND_NEAR_LEAVES]; /**< origin of a leaf whose members differ in their image */
+  float x[3][WEND_NEAR];            /**< scaled, about the centre; INFINITY: nobody */
+  float h2[WEND_NEAR];              /**< 0 if not mutual */
   float slack[WEND_NEAR];
   int32_t name[WEND_NEAR];
 } wend_near;
@@ -46,7 +50,11 @@ typedef struct wend_member {
 
 typedef struct wend_near_kit {
   const char *name;
-  /** Lays out the particles of leaf k of the collection, unless it straddles or is not full. */
+  /** Adds those of the 8 leaves from `leaf` on that reach the group to the collection; they are
+   *  measured from at[origins]. */
+  void (*collect)(wend_near *near, int32_t leaf);
+  /** Lays out the particles of leaf k of the collection, which is full and does not straddle.
+   */
   void (*load)(wend_near *near, int32_t k);
   /** Chooses the leaves that reach a box of squared radius h2 into `to`. No overlap. */
   void (*narrow)(const wend_leaves *restrict from, const float lo[3], const float hi[3],

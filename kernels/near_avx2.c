@@ -45,40 +45,53 @@ AVX2 static inline void pack_ints(int32_t *to, const int32_t *from, __m256i orde
   _mm256_storeu_si256((__m256i *)to, _mm256_permutevar8x32_epi32(v, order));
 }
 
-/* Four places, less the origin and scaled, as rows of x, y, z, H of four. */
-AVX2 static inline void four_places(const double (*place)[4], __m256d origin, __m256d scale,
-                                    __m128 row[4]) {
+/* Four rows x, y, z, H, less an origin and scaled, as columns of four. */
+AVX2 static inline void four_rows(const double (*from)[4], __m256d origin, __m256d scale,
+                                  __m128 column[4]) {
   for (int j = 0; j < 4; j++)
-    row[j] =
-        _mm256_cvtpd_ps(_mm256_mul_pd(_mm256_sub_pd(_mm256_loadu_pd(place[j]), origin), scale));
-  _MM_TRANSPOSE4_PS(row[0], row[1], row[2], row[3]);
+    column[j] =
+        _mm256_cvtpd_ps(_mm256_mul_pd(_mm256_sub_pd(_mm256_loadu_pd(from[j]), origin), scale));
+  _MM_TRANSPOSE4_PS(column[0], column[1], column[2], column[3]);
 }
 
-AVX2 static void load_avx2(wend_near *near, int32_t k) {
-  const wend_origin *o = &near->origin[k];
-  const wend_frame *f = &near->frame;
-  const int32_t begin = o->leaf * WEND_LEAF, at = k * WEND_LEAF;
-  const __m256d origin = _mm256_loadu_pd(o->at), scale = _mm256_set1_pd(f->scale);
-  for (int part = 0; part < WEND_LEAF; part += 4) {
-    __m128 row[4];
-    four_places(near->places.place + begin + part, origin, scale, row);
-    for (int a = 0; a < 3; a++) _mm_storeu_ps(&near->x[a][at + part], row[a]);
-    _mm_storeu_ps(&near->h2[at + part], near->mutual ? row[3] : _mm_setzero_ps());
-  }
-  const __m256 q = _mm256_loadu_ps(&near->h2[at]);
+/* Eight rows as columns of eight. */
+AVX2 static inline void eight_rows(const double (*from)[4], __m256d origin, __m256d scale,
+                                   __m256 column[4]) {
+  __m128 low[4], high[4];
+  four_rows(from, origin, scale, low);
+  four_rows(from + 4, origin, scale, high);
+  for (int a = 0; a < 4; a++)
+    column[a] = _mm256_insertf128_ps(_mm256_castps128_ps256(low[a]), high[a], 1);
+}
+
+/* wend_frame_slack of eight scaled radii. */
+AVX2 static inline __m256 slacks(const wend_frame *f, __m256 q) {
   const __m256 radius = _mm256_max_ps(q, _mm256_set1_ps(1.0f));
   const __m256 s = _mm256_add_ps(radius, _mm256_set1_ps((float)f->spread));
   const __m256 unit = _mm256_add_ps(_mm256_mul_ps(_mm256_set1_ps(0x1.01p-19f), s),
                                     _mm256_set1_ps((float)f->round));
   const __m256 trusted = _mm256_cmp_ps(radius, _mm256_set1_ps((float)f->largest), _CMP_LT_OQ);
-  _mm256_storeu_ps(&near->h2[at], _mm256_mul_ps(q, q));
-  _mm256_storeu_ps(&near->slack[at],
-                   _mm256_blendv_ps(_mm256_set1_ps(INFINITY), _mm256_mul_ps(s, unit), trusted));
-  const __m256i ids =
-      _mm256_add_epi32(_mm256_set1_epi32(begin), _mm256_setr_epi32(0, 1, 2, 3, 4, 5, 6, 7));
+  return _mm256_blendv_ps(_mm256_set1_ps(INFINITY), _mm256_mul_ps(s, unit), trusted);
+}
+
+AVX2 static inline __m256i counting(int32_t from) {
+  return _mm256_add_epi32(_mm256_set1_epi32(from), _mm256_setr_epi32(0, 1, 2, 3, 4, 5, 6, 7));
+}
+
+AVX2 static void load_avx2(wend_near *near, int32_t k) {
+  const wend_frame *f = &near->frame;
+  const int32_t begin = near->leaf[k] * WEND_LEAF, to = k * WEND_LEAF;
   const int32_t *name = near->places.name;
-  _mm256_storeu_si256((__m256i *)&near->name[at],
-                      name ? _mm256_loadu_si256((const __m256i *)(name + begin)) : ids);
+  __m256 column[4];
+  eight_rows(near->places.place + begin, _mm256_loadu_pd(near->at[near->origin[k]]),
+             _mm256_set1_pd(f->scale), column);
+  const __m256 q = near->mutual ? column[3] : _mm256_setzero_ps();
+  for (int a = 0; a < 3; a++) _mm256_storeu_ps(&near->x[a][to], column[a]);
+  _mm256_storeu_ps(&near->h2[to], _mm256_mul_ps(q, q));
+  _mm256_storeu_ps(&near->slack[to], slacks(f, q));
+  _mm256_storeu_si256((__m256i *)&near->name[to],
+                      name ? _mm256_loadu_si256((const __m256i *)(name + begin))
+                           : counting(begin));
 }
 
 /* A box, or a place, and a squared radius in every lane. */
@@ -95,20 +108,61 @@ AVX2 static inline wide_box widen(const float lo[3], const float hi[3], float h2
   return b;
 }
 
-/* Which of leaves k .. k + 7 reach a box. */
-AVX2 static inline unsigned reaches(const wend_leaves *v, int32_t k, const wide_box *box) {
+/* Which of eight boxes with supports reach another box. */
+AVX2 static inline unsigned reach(const __m256 *lo, const __m256 *hi, __m256 reach2,
+                                  __m256 slack, const wide_box *box) {
   __m256 r2 = _mm256_setzero_ps();
   for (int a = 0; a < 3; a++) {
-    const __m256 below = _mm256_sub_ps(_mm256_loadu_ps(&v->lo[a][k]), box->hi[a]);
-    const __m256 above = _mm256_sub_ps(box->lo[a], _mm256_loadu_ps(&v->hi[a][k]));
+    const __m256 below = _mm256_sub_ps(lo[a], box->hi[a]);
+    const __m256 above = _mm256_sub_ps(box->lo[a], hi[a]);
     const __m256 d = _mm256_max_ps(_mm256_max_ps(below, above), _mm256_setzero_ps());
     r2 = _mm256_add_ps(r2, _mm256_mul_ps(d, d));
   }
-  const __m256 h2 = _mm256_max_ps(_mm256_loadu_ps(&v->reach2[k]), box->h2);
-  const __m256 beyond =
-      _mm256_cmp_ps(_mm256_sub_ps(r2, h2), _mm256_loadu_ps(&v->slack[k]), _CMP_GT_OQ);
+  const __m256 over = _mm256_sub_ps(r2, _mm256_max_ps(reach2, box->h2));
+  return ~(unsigned)_mm256_movemask_ps(_mm256_cmp_ps(over, slack, _CMP_GT_OQ)) & 0xffu;
+}
+
+/* Which of leaves k .. k + 7 reach a box. */
+AVX2 static inline unsigned reaches(const wend_leaves *v, int32_t k, const wide_box *box) {
+  __m256 lo[3], hi[3];
+  for (int a = 0; a < 3; a++) {
+    lo[a] = _mm256_loadu_ps(&v->lo[a][k]);
+    hi[a] = _mm256_loadu_ps(&v->hi[a][k]);
+  }
   const unsigned there = v->n - k < 8 ? (1u << (v->n - k)) - 1u : 0xffu;
-  return ~(unsigned)_mm256_movemask_ps(beyond) & there;
+  return there &
+         reach(lo, hi, _mm256_loadu_ps(&v->reach2[k]), _mm256_loadu_ps(&v->slack[k]), box);
+}
+
+AVX2 static inline void put_floats(float *to, __m256 v, __m256i order) {
+  _mm256_storeu_ps(to, _mm256_permutevar8x32_ps(v, order));
+}
+
+AVX2 static void collect_avx2(wend_near *near, int32_t leaf) {
+  const wend_frame *f = &near->frame;
+  wend_leaves *to = &near->leaves;
+  const __m256d at = _mm256_loadu_pd(near->at[near->origins]);
+  const __m256d scale = _mm256_set1_pd(f->scale);
+  __m256 lo[4], hi[4];
+  eight_rows((const double(*)[4])near->places.tree->lo + leaf, at, scale, lo);
+  eight_rows((const double(*)[4])near->places.tree->hi + leaf, at, scale, hi);
+  const __m256 q = near->mutual ? lo[3] : _mm256_setzero_ps(), q2 = _mm256_mul_ps(q, q);
+  const __m256 slack = slacks(f, q);
+  const wide_box box = widen(f->lo, f->hi, f->h2);
+  const unsigned mask = reach(lo, hi, q2, slack, &box);
+  const __m256i order = packing(mask);
+  const int32_t n = to->n;
+  for (int a = 0; a < 3; a++) {
+    put_floats(&to->lo[a][n], lo[a], order);
+    put_floats(&to->hi[a][n], hi[a], order);
+  }
+  put_floats(&to->reach2[n], q2, order);
+  put_floats(&to->slack[n], slack, order);
+  _mm256_storeu_si256((__m256i *)&to->slot[n], counting(n));
+  _mm256_storeu_si256((__m256i *)&near->leaf[n],
+                      _mm256_add_epi32(_mm256_set1_epi32(leaf), order));
+  _mm256_storeu_si256((__m256i *)&near->origin[n], _mm256_set1_epi32(near->origins));
+  to->n = n + __builtin_popcount(mask);
 }
 
 AVX2 static void narrow_avx2(const wend_leaves *restrict from, const float lo[3],
@@ -214,8 +268,9 @@ AVX2 static void distances_avx2(const wend_places *p, int32_t self, int32_t n,
 }
 
 const wend_near_kit *wend_near_kit_avx2(void) {
-  static const wend_near_kit kit = {"avx2",      load_avx2,  narrow_avx2,
-                                    choose_avx2, sieve_avx2, distances_avx2};
+  static const wend_near_kit kit = {
+      "avx2", collect_avx2, load_avx2, narrow_avx2, choose_avx2, sieve_avx2, distances_avx2,
+  };
   __builtin_cpu_init();
   return __builtin_cpu_supports("avx2") && __builtin_cpu_supports("popcnt") ? &kit : NULL;
 }

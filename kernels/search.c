@@ -29,8 +29,8 @@ typedef struct list {
  * where it is not there. */
 static int32_t slot_of(const wend_near *near, int32_t guess, int32_t self) {
   const int32_t leaf = self / WEND_LEAF, n = near->leaves.n;
-  while (guess < n && near->origin[guess].leaf < leaf) guess++;
-  return guess < n && near->origin[guess].leaf == leaf ? guess : -1;
+  while (guess < n && near->leaf[guess] < leaf) guess++;
+  return guess < n && near->leaf[guess] == leaf ? guess : -1;
 }
 
 /* Continues a row's list with its pairs among some leaves of the collection. */

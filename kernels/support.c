@@ -1,26 +1,26 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * support.c: the root of N(H) = target.
  *
- * With V the unit-ball volume, N(H) = V sum_j f(r_j/H) and d ln N / d ln H = -sum q f' / sum f.
- * ln N is nearly straight in ln H, so Newton steps are made there. Distances beyond H are left
- * out before summing: every sum, and with it the root, is then the same bits whatever the trial
- * was. */
+ * With V the unit-ball volume, N(H) = V sum_j f(r_j/H) and
+ * d ln N / d ln H = -sum q f' / sum f. ln N is nearly straight in ln H, so Newton steps are
+ * made there. Sums are made in lanes by position in the list, and the list that the root is
+ * found from is what is below a level, never what is below the trial: the root is the same bits
+ * whatever the trial was. */
 #include "support.h"
 
 #include "clones.h"
 
 #include <math.h>
 #include <stdbool.h>
+#include <stddef.h>
 
-#define BLOCK 64 /* distances worked on at once */
-#define LANES                                                                                  \
-  8 /* partial sums; a fixed number, so that any vector width gives the same bits              \
-     */
-#define CONVERGED 1e-7 /* last step in ln H: the error after it is about its square */
+#define BLOCK 64       /* distances worked on at once */
+#define LANES 8        /* partial sums: a fixed number, whatever the width of vectors */
+#define CONVERGED 5e-7 /* last step in ln H: the error after it is below twice its square */
 #define STEPS 60       /* bisection alone needs 50 */
 
-/* 2^(k/4), k = 0..3, of the mantissa range [1/2, 1): exact constants, so that levels are the
- * same everywhere. */
+/* 2^(k/4), k = 0..3, of the mantissa range [1/2, 1): exact constants, so that
+ * levels are the same everywhere. */
 static const double QUARTER[4] = {0x1p-1, 0x1.306fe0a31b715p-1, 0x1.6a09e667f3bcdp-1,
                                   0x1.ae89f995ad3adp-1};
 
@@ -63,78 +63,103 @@ static void lanes_add_slope(int m, const double *restrict q, const double *restr
     for (int l = 0; l < LANES; l++) lane[l] -= q[k + l] * slope[k + l];
 }
 
-/* Fills q up to whole lanes with 1, where s = s' = 0. */
-static int fill_up(int m, double *q) {
-  while (m % LANES != 0) q[m++] = 1.0;
-  return m;
-}
-
 /* What a solve works on: distances in canonical order. */
 typedef struct problem {
   const wend_smoothing *smoothing;
   double factor; /* unit-ball volume x norm */
   double target;
+  double least; /* the smallest distance that is not zero */
   int32_t n;
   double *r;
 } problem;
 
-/* N at level k from the distances below it; *distinct tells whether anything but coincident
- * particles is inside. */
-static double level_sum(const problem *p, int k, bool *distinct) {
-  const double h = level_value(k), scale = 1.0 / h;
-  double q[BLOCK], s[BLOCK], lane[LANES] = {0.0}, largest = 0.0;
-  int m = 0;
-  for (int32_t j = 0; j < p->n; j++) {
-    const bool within = p->r[j] < h;
-    q[m] = p->r[j] * scale;
-    largest = within && p->r[j] > largest ? p->r[j] : largest;
-    m += within;
-    if (m == BLOCK || (j == p->n - 1 && m > 0)) {
-      m = fill_up(m, q);
-      p->smoothing->shape(m, q, s);
-      lanes_add(m, s, lane);
-      m = 0;
-    }
+/* q = r/h of a block of distances, filled up to whole lanes with 1, where s =
+ * s' = 0. Returns how many. */
+WEND_CLONES
+static int block_load(int32_t n, const double *restrict r, double scale, double *restrict q) {
+  const int some = n < BLOCK ? (int)n : BLOCK;
+  for (int k = 0; k < some; k++) q[k] = r[k] * scale;
+  int m = some;
+  while (m % LANES != 0) q[m++] = 1.0;
+  return m;
+}
+
+/* Sum of s(q) over all distances; with slope not NULL, of -q s'(q) too. */
+static double shape_sum(const problem *p, double h, double *restrict slope) {
+  double q[BLOCK], s[BLOCK], lane[LANES] = {0.0}, lane_slope[LANES] = {0.0};
+  for (int32_t begin = 0; begin < p->n; begin += BLOCK) {
+    const int m = block_load(p->n - begin, p->r + begin, 1.0 / h, q);
+    p->smoothing->shape(m, q, s);
+    lanes_add(m, s, lane);
+    if (!slope) continue;
+    p->smoothing->slope(m, q, s);
+    lanes_add_slope(m, q, s, lane_slope);
   }
-  *distinct = largest > 0.0;
-  return p->factor * total(lane);
+  if (slope) *slope = total(lane_slope);
+  return total(lane);
+}
+
+/* Sum of s(q), one after the other: zeros beyond h do not change it, however
+ * many they are. */
+static double shape_sum_in_order(const problem *p, double h) {
+  double q[BLOCK], s[BLOCK], sum = 0.0;
+  for (int32_t begin = 0; begin < p->n; begin += BLOCK) {
+    const int m = block_load(p->n - begin, p->r + begin, 1.0 / h, q);
+    p->smoothing->shape(m, q, s);
+    for (int k = 0; k < m; k++) sum += s[k];
+  }
+  return sum;
+}
+
+/* N at a level. Its round-off depends on the list, so near the target it is
+ * summed in order. */
+static double number_at(const problem *p, int k) {
+  const double h = level_value(k), number = p->factor * shape_sum(p, h, NULL);
+  const double doubt = 1e-9 + 0x1p-53 * p->n;
+  return fabs(number - p->target) > doubt * p->target ? number
+                                                      : p->factor * shape_sum_in_order(p, h);
+}
+
+/* The least distance that is not zero. */
+WEND_CLONES
+static double nearest(int32_t n, const double *restrict r) {
+  double lane[LANES], least = INFINITY;
+  for (int l = 0; l < LANES; l++) lane[l] = INFINITY;
+  const int32_t whole = n - n % LANES;
+  for (int32_t j = 0; j < whole; j += LANES)
+#pragma GCC unroll 1
+    for (int l = 0; l < LANES; l++) {
+      const double distinct = r[j + l] > 0.0 ? r[j + l] : INFINITY;
+      lane[l] = distinct < lane[l] ? distinct : lane[l];
+    }
+  for (int l = 0; l < LANES; l++) least = lane[l] < least ? lane[l] : least;
+  for (int32_t j = whole; j < n; j++) least = r[j] > 0.0 && r[j] < least ? r[j] : least;
+  return least;
 }
 
 /* Leaves out what is not below h, for good. */
 static void shorten(problem *p, double h) {
-  int32_t m = 0;
-  for (int32_t j = 0; j < p->n; j++) {
-    p->r[m] = p->r[j];
-    m += p->r[m] < h;
+  double *r = p->r;
+  int64_t m = 0;
+  for (int64_t j = 0, n = p->n; j < n; j++) {
+    const double one = r[j];
+    r[m] = one;
+    m += one < h;
   }
-  p->n = m;
+  p->n = (int32_t)m;
 }
 
-/* Sums s(q) and -q s'(q) over all distances left. */
-static void both_sums(const problem *p, double h, double *restrict shape,
-                      double *restrict slope) {
-  const double scale = 1.0 / h;
-  double q[BLOCK], s[BLOCK], lane[LANES] = {0.0}, lane_slope[LANES] = {0.0};
-  for (int32_t begin = 0; begin < p->n; begin += BLOCK) {
-    const int32_t left = p->n - begin, some = left < BLOCK ? left : BLOCK;
-    for (int32_t k = 0; k < some; k++) q[k] = p->r[begin + k] * scale;
-    const int m = fill_up(some, q);
-    p->smoothing->shape(m, q, s);
-    lanes_add(m, s, lane);
-    p->smoothing->slope(m, q, s);
-    lanes_add_slope(m, q, s, lane_slope);
-  }
-  *shape = total(lane);
-  *slope = total(lane_slope);
-}
-
-/* The root between h[0] and h[1], where N is number[0] < target <= number[1]. */
-static double root_between(const problem *p, double h[2], const double number[2]) {
-  const double share = log(p->target / number[0]) / log(number[1] / number[0]);
-  double x = h[0] * pow(h[1] / h[0], share);
+/* The root between levels h[0] and h[1]. From here on the list is what is below
+ * h[1], and all sums are the same bits whatever the trial was. */
+static double root_between(problem *p, double h[2]) {
+  shorten(p, h[1]);
+  const double below = p->factor * shape_sum(p, h[0], NULL);
+  const double above = p->factor * shape_sum(p, h[1], NULL);
+  const double share = log(p->target / below) / log(above / below);
+  double x = h[0] + (h[1] - h[0]) * (share > 0.0 && share < 1.0 ? share : 0.5);
   for (int step = 0; step < STEPS; step++) {
-    double shape, slope;
-    both_sums(p, x, &shape, &slope);
+    double slope;
+    const double shape = shape_sum(p, x, &slope);
     const double excess = log(p->factor * shape / p->target);
     h[excess >= 0.0] = x;
     double move = -excess * shape / slope;
@@ -148,10 +173,10 @@ static double root_between(const problem *p, double h[2], const double number[2]
   return x;
 }
 
-/* A level below one that holds the target, probably the one that holds it barely, or the next:
- * N grows about as H^dim. */
-static int lower_guess(int top, double sum, double target, int dim) {
-  const int levels = (int)(4.0 * log2(sum / target) / dim);
+/* A level below one that holds the target, probably the one that holds it
+ * barely, or the next: N grows about as H^dim. */
+static int lower_guess(int top, double number, double target, int dim) {
+  const int levels = (int)(4.0 * log2(number / target) / dim);
   return levels > 1 ? top - levels : top - 1;
 }
 
@@ -159,27 +184,24 @@ double wend_support_solve(const wend_smoothing *smoothing, int dim, double targe
                           int32_t n, double *restrict r) {
   const double pi = 0x1.921fb54442d18p+1;
   const double ball = dim == 3 ? 4.0 / 3.0 * pi : pi;
-  problem p = {smoothing, ball * smoothing->norm[dim - 2], target, n, r};
+  problem p = {smoothing, ball * smoothing->norm[dim - 2], target, nearest(n, r), n, r};
   int top = level_number(trial), bottom = top; /* bottom < top: it does not hold the target */
-  bool distinct;
-  double above = level_sum(&p, top, &distinct), below = 0.0;
-  if (!(above >= target && distinct)) return 0.0;
+  double above = number_at(&p, top), below = 0.0;
+  if (!(above >= target && p.least < level_value(top))) return 0.0;
   while (top - bottom != 1) {
     const int next =
         bottom < top ? bottom + (top - bottom + 3) / 4 : lower_guess(top, above, target, dim);
-    const double sum = level_sum(&p, next, &distinct);
-    if (sum >= target && distinct) {
-      shorten(&p, level_value(next));
+    const double number = number_at(&p, next);
+    if (number >= target && p.least < level_value(next)) {
+      if (next < top - 2) shorten(&p, level_value(next));
       bottom = bottom < top ? bottom : next;
       top = next;
-      above = sum;
+      above = number;
     } else {
       bottom = next;
-      below = sum;
+      below = number;
     }
   }
   if (below >= target) return level_value(top);
-  shorten(&p, level_value(top));
-  double h[2] = {level_value(bottom), level_value(top)};
-  return root_between(&p, h, (double[2]){below, above});
+  return root_between(&p, (double[2]){level_value(bottom), level_value(top)});
 }

@@ -1,10 +1,11 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * walk.h: a resumable walk over the leaves of the hierarchy that lie near a group of particles.
+ * walk.h: a resumable walk over the boxes of the hierarchy that lie near a group of particles.
  *
- * Boxes are visited in order, so leaves come out in canonical order. The test never loses a
- * pair to round-off: corners are differenced and squared exactly as places are, and rounding is
- * monotone, so the distance of two boxes is at most the distance of any two members, bit for
- * bit. */
+ * It ends at branches, boxes of the level above the leaves (leaves, where there is no other
+ * level). Boxes are visited in order, so branches come out in canonical order. The test never
+ * loses a pair to round-off: corners are differenced and squared exactly as places are, and
+ * rounding is monotone, so the distance of two boxes is at most the distance of any two
+ * members, bit for bit. */
 #ifndef WEND_KERNELS_WALK_H
 #define WEND_KERNELS_WALK_H
 
@@ -16,7 +17,8 @@ typedef struct wend_walk {
   double lo[3], hi[3]; /**< corners of the group */
   double period[3];    /**< INFINITY where not periodic */
   double reach;        /**< largest radius of the group */
-  bool mutual;         /**< a leaf also reaches out with the largest support inside it */
+  bool mutual;         /**< a box also reaches out with the largest support inside it */
+  int floor;           /**< level of the branches: 1, or 0 */
   int level;           /**< next box to visit; -1 at the end */
   int32_t box;         /**< its number within the level */
 } wend_walk;
@@ -26,6 +28,7 @@ typedef struct wend_walk {
 static inline wend_walk wend_walk_begin(const wend_tree *tree, const wend_domain *domain,
                                         bool mutual) {
   wend_walk w = {.tree = tree, .mutual = mutual, .level = tree->levels - 1};
+  w.floor = tree->levels > 1 ? 1 : 0;
   for (int a = 0; a < 3; a++) {
     w.lo[a] = INFINITY;
     w.hi[a] = -INFINITY;
@@ -81,7 +84,7 @@ static inline int32_t wend_walk_next(wend_walk *w) {
     const int32_t box = w->box;
     if (!wend_walk_reaches(w, w->tree->offset[w->level] + box)) {
       wend_walk_skip(w);
-    } else if (w->level == 0) {
+    } else if (w->level == w->floor) {
       wend_walk_skip(w);
       return box;
     } else {
