@@ -204,7 +204,7 @@ class Rules:
                 continue
             file, inside = item.text.strip().split(":")
             data = h5py.File(os.path.join(os.path.dirname(self.name), file), "r")[inside]
-            kind = {"Float": "f", "UInt": "u"}[item.get("NumberType")]
+            kind = {"Float": "f", "Int": "u"}[item.get("NumberType")]
             self.check(item.get("Dimensions") == count == str(data.shape[0]), f"length of {inside}")
             self.check(data.dtype.kind == kind and str(data.dtype.itemsize) == item.get("Precision"),
                        f"type of {inside}")
