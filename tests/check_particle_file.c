@@ -122,15 +122,12 @@ static void sort_by_key(wend_particles *p, const wend_domain *domain) {
   free(place);
 }
 
-/* The part of the whole sorted set that this rank owns, dealt out unevenly. */
-static wend_particles own_part(const wend_particles *all) {
-  const int64_t half = all->n / 2,
-                first = team.rank == 0
-                            ? 0
-                            : half + (all->n - half) * (team.rank - 1) / (team.size - 1);
-  const int64_t end = team.size == 1   ? all->n
-                      : team.rank == 0 ? half
-                                       : half + (all->n - half) * team.rank / (team.size - 1);
+/* Part number `part` of the whole sorted set, cut in as many unequal parts as there are ranks.
+ */
+static wend_particles own_part(const wend_particles *all, int part) {
+  const int64_t half = all->n / 2, rest = all->n - half, others = team.size - 1;
+  const int64_t first = part == 0 ? 0 : half + rest * (part - 1) / others;
+  const int64_t end = others == 0 ? all->n : part == 0 ? half : half + rest * part / others;
   wend_particles p;
   wend_particles_init(&team, &p, (int32_t)(end - first), wend_particles_mask(all));
   for (int32_t i = 0; i < p.n; i++) {
@@ -148,7 +145,7 @@ START_TEST(data_do_not_depend_on_the_number_of_ranks) {
   wend_team_init(&alone, MPI_COMM_SELF);
   wend_particles all = set_make(&alone, dim, SET_ALL);
   sort_by_key(&all, &facts.domain);
-  wend_particles mine = own_part(&all);
+  wend_particles mine = own_part(&all, team.rank);
   const wend_status status =
       wend_particle_file_write(&team, scratch_path("many.h5"), &set_units, &mine, &facts);
   ck_assert_msg(status == WEND_OK, "%s", team.text);
@@ -163,6 +160,39 @@ START_TEST(data_do_not_depend_on_the_number_of_ranks) {
   }
   ck_assert_msg(spread_everywhere(good), "%d data sets, %d unlike", c.sets, c.unlike);
   wend_particles_reset(&mine);
+  wend_particles_reset(&all);
+  wend_team_reset(&alone);
+}
+END_TEST
+
+/* Readers are told a stretch for each patch, so patches need the canonical order, over ranks
+ * too. */
+START_TEST(particles_out_of_order_make_one_patch) {
+  const wend_file_facts facts = set_facts(3);
+  wend_team alone;
+  hsize_t patches[2] = {0};
+  wend_team_init(&alone, MPI_COMM_SELF);
+  wend_particles all = set_make(&alone, 3, SET_ALL);
+  sort_by_key(&all, &facts.domain);
+  for (int back = 0; back < 2; back++) {
+    wend_particles mine = own_part(&all, back ? team.size - 1 - team.rank : team.rank);
+    if (back && team.size == 1) mine.key[0] = mine.key[mine.n - 1];
+    ck_assert_int_eq(
+        wend_particle_file_write(&team, scratch_path("order.h5"), &set_units, &mine, &facts),
+        WEND_OK);
+    MPI_Barrier(MPI_COMM_WORLD);
+    const hid_t file = H5Fopen(scratch_path("order.h5"), H5F_ACC_RDONLY, H5P_DEFAULT);
+    const hid_t set = H5Dopen2(file, SET_GAS "particlePatches/numParticles", H5P_DEFAULT);
+    const hid_t space = H5Dget_space(set);
+    H5Sget_simple_extent_dims(space, &patches[back], NULL);
+    H5Sclose(space);
+    H5Dclose(set);
+    H5Fclose(file);
+    MPI_Barrier(MPI_COMM_WORLD);
+    wend_particles_reset(&mine);
+  }
+  /* the set lies on a few planes of the box, which pass through more than a few cells */
+  ck_assert(spread_everywhere(patches[0] > 8 && patches[0] <= 64 && patches[1] == 1));
   wend_particles_reset(&all);
   wend_team_reset(&alone);
 }
@@ -356,6 +386,7 @@ int main(int count, char **arguments) {
   tcase_add_loop_test(tc, all_columns_come_back_to_the_bit, 2, 4);
   tcase_add_test(tc, absent_columns_stay_absent);
   tcase_add_loop_test(tc, data_do_not_depend_on_the_number_of_ranks, 2, 4);
+  tcase_add_test(tc, particles_out_of_order_make_one_patch);
   tcase_add_test(tc, iterations_are_found);
   tcase_add_loop_test(tc, places_are_brought_into_the_box, 0, 15);
   tcase_add_test(tc, failed_writing_keeps_the_old_file);
