@@ -88,21 +88,18 @@ static void short_form(wend_setup_reader *reader, const char *path, wend_law *la
   if (law->value < 0) wend_setup_fail(reader, path, "\"%s\" must not be less than 0", text);
 }
 
-static bool key_given(wend_setup_reader *reader, const char *path, const char *tail) {
-  char key[128];
-  snprintf(key, sizeof key, "%s%s", path, tail);
-  return wend_setup_given(reader, key);
-}
-
 static void power_form(wend_setup_reader *reader, const char *path, wend_law *law) {
   law->kind = WEND_LAW_POWER;
-  char group[128];
+  char group[96], at[128], density[128], field[128];
   snprintf(group, sizeof group, "%s.power", path);
-  if (!key_given(reader, group, ".at"))
+  snprintf(at, sizeof at, "%s.at", group);
+  snprintf(density, sizeof density, "%s.density", group);
+  snprintf(field, sizeof field, "%s.field", group);
+  if (!wend_setup_given(reader, at))
     wend_setup_fail(reader, group, "needs the key at, the diffusivity that the law scales");
-  if (law->density_index != 0 && !key_given(reader, group, ".density"))
+  if (law->density_index != 0 && !wend_setup_given(reader, density))
     wend_setup_fail(reader, group, "needs the key density, at which the law equals at");
-  if (law->field_index != 0 && !key_given(reader, group, ".field"))
+  if (law->field_index != 0 && !wend_setup_given(reader, field))
     wend_setup_fail(reader, group, "needs the key field, at which the law equals at");
   if (law->density_index == 0 && law->field_index == 0)
     wend_setup_fail(reader, group,
