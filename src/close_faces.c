@@ -7,7 +7,7 @@
 #include <stdlib.h>
 
 /* Bounds of the Jacobi-scaled spectrum: above, by counting; below, where sweeps stop to pay. */
-static const double highest = 4, lowest = 0.25;
+static const double highest = 4, lowest = 0.1;
 
 /* Sweeps are judged in batches: a look at the closure costs one reduction and a pass over the pairs. */
 enum { BATCH = 4 };

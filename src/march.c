@@ -60,8 +60,10 @@ static void range(wend_team *team, const wend_march *m, const double *energy, do
   *high = most[1];
 }
 
-/* Escape lowers the least value legally; then only e < 0 and the upper end count. */
+/* Escape lowers the least value legally; then only e < 0 and the upper end count. Without a limiter
+ * there are no bounds to keep but e >= 0. */
 static bool within(const wend_march *m, double low, double high) {
+  if (!m->settings.limited) return low >= 0 && isfinite(high);
   const double give = slack * fmax(fabs(m->low), fabs(m->high));
   const double floor = m->unknowns > 1 ? 0 : m->low - give;
   return low >= 0 && low >= floor && high <= m->high + give;

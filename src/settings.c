@@ -6,7 +6,7 @@ wend_settings wend_settings_default(void) {
   return (wend_settings){
       .smoothing = "wendland-c2",
       .neighbours = 0,
-      .closure = 2e-3,
+      .closure = 5e-4,
       .sweeps = 32,
       .close_faces = true,
       .fix_volumes = true,
@@ -17,7 +17,7 @@ wend_settings wend_settings_default(void) {
       .supertime = "rkg2",
       .stages = 21,
       .margin = 0.95,
-      .tolerance = 1e-4,
+      .tolerance = 1e-5,
       .first_step = 0,
       .fixed_step = 0,
       .local_bounds = false,
