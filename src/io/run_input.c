@@ -57,6 +57,8 @@ wend_status wend_run_read_particles(wend_team *team, wend_run *run) {
   run->file_records = wend_particles_mask(&run->particles);
   run->total = run->particles.n;
   wend_team_count(team, 1, &run->total);
+  if (run->total == 0)
+    wend_fail(team, WEND_ERR_PARTICLES, "%s: species gas holds no particles", setup->particles);
   choose_domain(team, run, &facts);
   choose_start(team, run, &facts);
   choose_volumes(team, run);

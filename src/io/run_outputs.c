@@ -43,9 +43,11 @@ static void make_folders(wend_team *team, const wend_run *run) {
     const char kept = path[k];
     path[k] = '\0';
     struct stat facts;
-    if (mkdir(path, 0777) != 0 && (stat(path, &facts) != 0 || !S_ISDIR(facts.st_mode))) {
+    const int trouble = mkdir(path, 0777) == 0 ? 0 : errno;
+    const bool there = stat(path, &facts) == 0;
+    if (trouble != 0 && !(there && S_ISDIR(facts.st_mode))) {
       wend_fail(team, WEND_ERR_FILE, "%s: output.folder: %s cannot be made: %s",
-                run->setup.path, path, strerror(errno));
+                run->setup.path, path, strerror(there ? ENOTDIR : trouble));
       return;
     }
     path[k] = kept;
