@@ -1,5 +1,12 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * particle_file.h: particle files in openPMD 1.1.0 (HDF5), read and written in parallel. */
+ * particle_file.h: particle files in openPMD 1.1.0 (HDF5), read and written in parallel.
+ *
+ * Records of species `gas` are listed in records.c; values are SI through unitSI, magnetic
+ * fields in tesla. What the standard has no place for is in the group /wend, which its readers
+ * skip: /wend         attributes version, git; data set setup (one string): who wrote it, and
+ * from what /wend/domain  attributes lower and upper (a number an axis), thickness, all times
+ * unitSI (metres); boundary_x, boundary_y (, boundary_z): "periodic", "closed" or "open"
+ * Another writer may give the box in the same way, or leave it to the setup. */
 #ifndef WEND_IO_PARTICLE_FILE_H
 #define WEND_IO_PARTICLE_FILE_H
 
