@@ -203,12 +203,12 @@ static const char *value_of(const wend_key *key) {
 }
 
 void wend_setup_explain(FILE *out) {
-  fprintf(out, "%-44s %-18s %-32s %s\n", "key", "value", "default", "meaning");
+  fprintf(out, "%-44s %-20s %-28s %s\n", "key", "value", "default", "meaning");
   for (int k = 0; k < wend_key_count(); k++) {
     const wend_key *key = &keys[k];
     char fallback[64];
     default_text(key, sizeof fallback, fallback);
-    fprintf(out, "%-44s %-18s %-32s %s", key->path, value_of(key), fallback, key->meaning);
+    fprintf(out, "%-44s %-20s %-28s %s", key->path, value_of(key), fallback, key->meaning);
     for (int n = 0; key->names != NULL && key->names(n) != NULL; n++)
       fprintf(out, "%s%s", n == 0 ? ": " : ", ", key->names(n));
     fprintf(out, "\n");
