@@ -6,6 +6,8 @@
 #include <string.h>
 
 static const wend_command table[] = {
+    {"example", "write a particle file and a setup to try", wend_example_command},
+    {"prove", "run a problem with a known answer and judge the figures", wend_prove_command},
     {"run", "carry a setup file through to its outputs", wend_run_command},
     {NULL, NULL, NULL},
 };

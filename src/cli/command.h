@@ -29,6 +29,8 @@ int wend_command_usage(wend_team *team, const char *format, ...)
     __attribute__((format(printf, 2, 3)));
 
 /** The subcommands, one file each. Collective. */
+int wend_example_command(wend_team *team, int argc, char **argv);
+int wend_prove_command(wend_team *team, int argc, char **argv);
 int wend_run_command(wend_team *team, int argc, char **argv);
 
 #endif
