@@ -6,7 +6,8 @@
 /* Change of length from one step to the next, and how far below the tolerance it aims. */
 static const double shrink_most = 0.3, grow_most = 2, aim = 0.8;
 
-/* Growth after a step that the bounds had shortened: gentle, since each failure costs an attempt. */
+/* Growth after a step that the bounds had shortened: gentle, since each failure costs an
+ * attempt. */
 static const double grow_after_bounds = 1.189207115002721;
 
 /* Order of the local error of a second-order scheme. */
@@ -25,6 +26,13 @@ static int fit_stages(const wend_settings *settings, const wend_supertime *famil
                       double explicit_step, double step) {
   const double ratio = step / (settings->margin * explicit_step);
   return ratio <= 1 ? 1 : wend_supertime_fit(family, ratio);
+}
+
+/* Accuracy never asks for less than the shortest super-step: below it the error is that of the
+ * jumps between particles, which no step removes, and forward Euler costs as much. */
+static double shortest(const wend_settings *settings, const wend_supertime *family,
+                       double explicit_step) {
+  return settings->margin * explicit_step * family->reach(family->least);
 }
 
 static double longest(const wend_settings *settings, const wend_supertime *family,
@@ -76,30 +84,37 @@ bool wend_control_shorten(wend_control *control, const wend_settings *settings,
   return true;
 }
 
+/* Sets the next length after an accepted step. */
+static void set_wanted(wend_control *control, const wend_plan *plan, double factor,
+                       double floor) {
+  double wanted = plan->step * factor;
+  wend_cause cause = WEND_CAUSE_ACCURACY;
+  if (plan->cause == WEND_CAUSE_BOUNDS) {
+    if (factor >= grow_after_bounds) cause = WEND_CAUSE_BOUNDS;
+    wanted = plan->step * fmin(factor, grow_after_bounds);
+  } else if (plan->cause == WEND_CAUSE_OUTPUT || plan->cause == WEND_CAUSE_STAGES) {
+    wanted = fmax(fmin(control->wanted, plan->step * grow_most), wanted);
+  }
+  control->wanted = cause == WEND_CAUSE_BOUNDS ? wanted : fmax(wanted, floor);
+  control->cause = cause;
+}
+
 bool wend_control_judge(wend_control *control, const wend_settings *settings,
                         const wend_supertime *family, double explicit_step, double error,
                         wend_plan *plan) {
-  const bool checked = plan->stages > 1 && settings->fixed_step <= 0;
+  const double floor = shortest(settings, family, explicit_step);
+  const bool checked = plan->step > floor && settings->fixed_step <= 0;
   const double ratio = error > 0 ? settings->tolerance / error : INFINITY;
   double factor = fmin(grow_most, fmax(shrink_most, aim * pow(ratio, 1 / local_order)));
   factor = round_down(factor);
   if (checked && ratio < 1) {
     control->redone_error++;
-    plan->step = fmax(plan->step * fmin(factor, 0.5), settings->margin * explicit_step);
+    plan->step = fmax(plan->step * fmin(factor, 0.5), floor);
     plan->stages = fit_stages(settings, family, explicit_step, plan->step);
     plan->cause = WEND_CAUSE_ACCURACY;
     return false;
   }
   control->steps[plan->cause]++;
-  if (plan->cause == WEND_CAUSE_BOUNDS) {
-    control->wanted = plan->step * fmin(factor, grow_after_bounds);
-    control->cause = factor < grow_after_bounds ? WEND_CAUSE_ACCURACY : WEND_CAUSE_BOUNDS;
-  } else if (plan->cause == WEND_CAUSE_OUTPUT || plan->cause == WEND_CAUSE_STAGES) {
-    control->wanted = fmax(fmin(control->wanted, plan->step * grow_most), plan->step * factor);
-    control->cause = WEND_CAUSE_ACCURACY;
-  } else {
-    control->wanted = plan->step * factor;
-    control->cause = WEND_CAUSE_ACCURACY;
-  }
+  set_wanted(control, plan, factor, floor);
   return true;
 }

@@ -50,7 +50,8 @@ bool wend_control_shorten(wend_control *control, const wend_settings *settings,
                           const wend_supertime *family, double explicit_step, wend_plan *plan);
 
 /** Judges the error of an attempt: true where it is accepted, and the next length is set; false where the plan was
- *  shortened and must be tried again. Steps at the forward-Euler limit are always accepted. */
+ *  shortened and must be tried again. Steps no longer than the shortest super-step of the family are always
+ *  accepted, and accuracy asks for nothing shorter. */
 bool wend_control_judge(wend_control *control, const wend_settings *settings,
                         const wend_supertime *family, double explicit_step, double error,
                         wend_plan *plan);
