@@ -43,6 +43,8 @@ web web_create(const web_plan *plan, uint64_t seed) {
   w.surface = calloc((size_t)n, sizeof *w.surface);
   w.diagonal = calloc((size_t)n, sizeof *w.diagonal);
   w.unknown = calloc((size_t)n, sizeof *w.unknown);
+  w.field = calloc((size_t)n, sizeof *w.field);
+  w.kappa = calloc((size_t)n, sizeof *w.kappa);
   for (int d = 0; d < 3; d++) {
     w.faces.area[d] = web_column(&w);
     w.faces.arm[d] = web_column(&w);
@@ -64,6 +66,8 @@ void web_destroy(web *w) {
   free(w->surface);
   free(w->diagonal);
   free(w->unknown);
+  free(w->field);
+  free(w->kappa);
   for (int d = 0; d < 3; d++) {
     free(w->faces.area[d]);
     free(w->faces.arm[d]);
@@ -78,6 +82,31 @@ wend_face_source web_source(const web *w) {
                             .place = (const double(*)[4])w->l.place,
                             .volume = w->volume,
                             .inverse = (const double(*)[6])w->inverse};
+}
+
+void web_magnetise(web *w, bool across, uint64_t seed) {
+  const double turn = 6.28 * cloud_random(&seed), wall = 2 * cloud_random(&seed) - 1;
+  const double null = 2 * cloud_random(&seed) - 1;
+  for (int32_t i = 0; i < w->l.n; i++) {
+    const double *x = w->l.place[i];
+    const bool beyond = x[0] > wall, none = hypot(x[0] - null, x[1] + null) < 0.4;
+    const double angle = turn + 2 * x[1] + (beyond ? 1.5 : 0);
+    const double tilt = w->l.domain.dim == 3 ? sin(turn + x[0] + 2 * x[2]) : 0;
+    w->field[i][0] = none ? 0 : cos(tilt) * cos(angle);
+    w->field[i][1] = none ? 0 : cos(tilt) * sin(angle);
+    w->field[i][2] = none ? 0 : sin(tilt);
+    w->kappa[i][0] = (beyond ? 0.01 : 1) * (0.5 + cloud_random(&seed));
+    w->kappa[i][1] = across ? 0.1 * cloud_random(&seed) : 0;
+    if (none) w->kappa[i][0] = w->kappa[i][1];
+  }
+}
+
+wend_operator_source web_operator(const web *w) {
+  return (wend_operator_source){.face = web_source(w),
+                                .field = (const double(*)[3])w->field,
+                                .kappa = (const double(*)[2])w->kappa,
+                                .angle_power = 4,
+                                .angle_share = 0.6};
 }
 
 int64_t web_entries(const web *w) { return w->l.pairs.first[w->l.pairs.slices]; }
@@ -106,6 +135,11 @@ void web_sweep(web *w, double lowest, int sweeps) {
     free(residual);
   }
   free(direction);
+}
+
+void web_close(web *w) {
+  web_sweep(w, 0.01, 400);
+  wend_faces_apply(&w->l.pairs, w->l.all, &w->faces, (const double(*)[4])w->unknown);
 }
 
 double (*web_residual(const web *w))[4] {

@@ -4,8 +4,8 @@
 #ifndef WEND_TESTS_WEB_H
 #define WEND_TESTS_WEB_H
 
-#include "faces.h"
 #include "lists.h"
+#include "operator.h"
 
 /** How the particles of a web stand. */
 typedef struct web_plan {
@@ -25,6 +25,8 @@ typedef struct web {
   wend_faces faces;
   double (*diagonal)[2];
   double (*unknown)[4];
+  double (*field)[3]; /**< unit field, 0 at first */
+  double (*kappa)[2]; /**< 0 at first */
 } web;
 
 /** Builds volumes, inverse matrices, surface marks and raw faces; unknowns are 0. */
@@ -32,6 +34,13 @@ web web_create(const web_plan *plan, uint64_t seed);
 void web_destroy(web *w);
 
 wend_face_source web_source(const web *w);
+
+/** Gives every particle a field and coefficients: smooth, with a jump of direction and of
+ * coefficients by 100, a region without field, and kappa_perp = 0 unless `across`. */
+void web_magnetise(web *w, bool across, uint64_t seed);
+/** Fields and coefficients for the operator kernels, p = 4, phi = 0.6; borrows from the web. */
+wend_operator_source web_operator(const web *w);
+
 /** Entries of a pair column, padding included. */
 int64_t web_entries(const web *w);
 /** A pair column of zeros; to be freed. */
@@ -42,6 +51,8 @@ int64_t web_twin(const web *w, int32_t i, int64_t k);
 /** Makes Chebyshev sweeps of the unknowns for eigenvalues in [lowest, 4], both conditions on.
  */
 void web_sweep(web *w, double lowest, int sweeps);
+/** Sweeps and applies the change: closed, volume-exact faces to float precision. */
+void web_close(web *w);
 /** Residual [rows][4] of both conditions; to be freed. */
 double (*web_residual(const web *w))[4];
 
