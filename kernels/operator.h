@@ -41,7 +41,8 @@ void wend_operator_along(const wend_pairs *pairs, wend_slices slices,
                          const double (*restrict field)[3], float *const area[3],
                          float *restrict alpha, float *restrict beta);
 
-/** Computes the three components of c_ij (grad e = sum_j c_ij (e_j - e_i)), [entries] each. */
+/** Computes the three components of c_ij (grad e = sum_j c_ij (e_j - e_i)), [entries] each. They
+ * may take the place of the arms. */
 void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
                             const wend_operator_source *source, float *const arm[3],
                             float *const gradient[3]);

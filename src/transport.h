@@ -28,8 +28,8 @@ typedef struct wend_transport {
 
 /** Builds the operator from B, kappa_par and kappa_perp of the particles. Collective.
  *
- *  Pair columns that only this needs are freed from the geometry, which must outlive the transport. Absent
- *  columns count as zero. A NaN or negative coefficient is an error that names the particle. */
+ *  Pair columns and matrices that only this needs are freed from the geometry, which must outlive
+ *  the transport. Absent columns count as zero. A NaN or negative coefficient is an error that names the particle. */
 wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
                                 const wend_particles *particles, wend_geometry *geometry,
                                 wend_transport *transport);

@@ -55,7 +55,8 @@ static bool any_open(const wend_domain *domain) {
   return domain->open[0] || domain->open[1] || domain->open[2];
 }
 
-/* Columns come and go in this order to keep the peak of memory low. */
+/* Columns come and go in this order to keep the peak of memory low; gradients take the place of
+ * arms, and the inverse matrices have served. */
 static wend_status build_pairs(wend_team *team, const wend_operator_source *source,
                                wend_transport *t) {
   wend_geometry *g = t->geometry;
@@ -63,21 +64,22 @@ static wend_status build_pairs(wend_team *team, const wend_operator_source *sour
   const wend_pairs *pairs = &g->near.pairs;
   free(g->faces.weight);
   g->faces.weight = NULL;
-  for (int d = 0; d < 3 && !t->along; d++) {
-    t->gradient[d] = wend_allocate(team, entries, sizeof(float));
-    if (entries > 0 && t->gradient[d] == NULL) return wend_agree(team);
-  }
   if (t->along) t->slope = wend_allocate(team, entries, sizeof(float));
   const wend_status status = wend_agree(team);
   if (status != WEND_OK) return status;
   if (t->along)
     wend_operator_slope(pairs, g->near.all, source, g->faces.arm, t->slope);
   else
-    wend_operator_gradient(pairs, g->near.all, source, g->faces.arm, t->gradient);
+    wend_operator_gradient(pairs, g->near.all, source, g->faces.arm, g->faces.arm);
   for (int d = 0; d < 3; d++) {
-    free(g->faces.arm[d]);
+    if (t->along)
+      free(g->faces.arm[d]);
+    else
+      t->gradient[d] = g->faces.arm[d];
     g->faces.arm[d] = NULL;
   }
+  free(g->inverse);
+  g->inverse = NULL;
   if (!t->along) return WEND_OK;
   t->alpha = wend_allocate(team, entries, sizeof(float));
   t->beta = wend_allocate(team, entries, sizeof(float));
