@@ -14,7 +14,7 @@
 
 #include "walk.h"
 
-#define WEND_NEAR_LEAVES 256 /* a multiple of 8 */
+#define WEND_NEAR_LEAVES 512 /* a multiple of 8 */
 
 /** Where a group stands, and what its members are measured by. */
 typedef struct wend_frame {

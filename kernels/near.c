@@ -85,6 +85,20 @@ int32_t wend_near_gather(const wend_near *near, int32_t n, const int32_t *member
   return n;
 }
 
+int32_t wend_near_group(wend_near *near, const wend_near_kit *kit, int32_t n,
+                        const int32_t *member, int32_t unit) {
+  wend_walk walk;
+  while (n > 0) {
+    const int32_t taken = wend_near_gather(near, n, member, &walk);
+    const bool whole = taken == n || taken % unit == 0;
+    n = taken == n ? n : taken - taken % unit;
+    if (!whole) continue;
+    if (wend_near_fill(near, kit, &walk, true)) return n;
+    n = n / 2 - n / 2 % unit;
+  }
+  return 0;
+}
+
 wend_member wend_near_member(const wend_near *near, int32_t self) {
   const wend_frame *f = &near->frame;
   const double *place = near->places.place[self], q = place[3] * f->scale;

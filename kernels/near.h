@@ -40,7 +40,7 @@ typedef struct wend_near {
 } wend_near;
 
 /** How many rows are served together, at most. */
-#define WEND_GROUP 64
+#define WEND_GROUP 128
 
 /** A member of the group, scaled and about the centre. */
 typedef struct wend_member {
@@ -91,6 +91,12 @@ int32_t wend_near_gather(const wend_near *near, int32_t n, const int32_t *member
  * Tells whether it is at its end; if not, call again (with begin false) for what is next.
  * Local. */
 bool wend_near_fill(wend_near *near, const wend_near_kit *kit, wend_walk *walk, bool begin);
+
+/** Lays out all that is near the first of n members, as many as fit together and leave room for
+ * it, in units of `unit` (n itself counts as whole); returns how many members, 0 where not one
+ * unit fits. Local. */
+int32_t wend_near_group(wend_near *near, const wend_near_kit *kit, int32_t n,
+                        const int32_t *member, int32_t unit);
 
 /** A member of the group, by its number among the places. Local. */
 wend_member wend_near_member(const wend_near *near, int32_t self);

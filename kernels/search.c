@@ -9,8 +9,6 @@
 
 #include "near.h"
 
-#define GROUP_SLICES (WEND_GROUP / WEND_LANES)
-
 /* A search under way. */
 typedef struct work {
   const wend_search *search;
@@ -73,12 +71,7 @@ static void slice_list_apart(work *w, int32_t begin, int32_t end, list *lists) {
   }
 }
 
-/* Lays out what is near n rows; false where they do not fit together or too much is near. */
-static bool group_fill(work *w, int32_t begin, int32_t n) {
-  wend_walk walk;
-  return wend_near_gather(&w->near, n, w->search->row + begin, &walk) == n &&
-         wend_near_fill(&w->near, w->kit, &walk, true);
-}
+static int32_t slices_of(int32_t rows) { return rows / WEND_LANES + (rows % WEND_LANES != 0); }
 
 /* Pads the lists of a slice to the longest and returns its width. */
 static int64_t slice_pad(list *lists, int32_t slice, int32_t rows) {
@@ -96,7 +89,7 @@ int32_t wend_search_pairs(const wend_search *search, int32_t begin, int32_t *res
                           int64_t capacity, int64_t *used, int64_t *restrict first,
                           int32_t *restrict count) {
   const int32_t rows = search->rows;
-  const int32_t slices = rows / WEND_LANES + (rows % WEND_LANES != 0);
+  const int32_t slices = slices_of(rows);
   work w = {.search = search, .kit = wend_near_kit_best()};
   w.near.places = (wend_places){search->domain, search->tree, search->place, search->store};
   w.near.mutual = true;
@@ -105,7 +98,9 @@ int32_t wend_search_pairs(const wend_search *search, int32_t begin, int32_t *res
     const int32_t row = slice * WEND_LANES, left = rows - row;
     const int32_t end = left < WEND_LANES ? rows : row + WEND_LANES;
     const int32_t group = left < WEND_GROUP ? left : WEND_GROUP;
-    if (slice >= together && group_fill(&w, row, group)) together = slice + GROUP_SLICES;
+    if (slice >= together)
+      together = slice + slices_of(wend_near_group(&w.near, w.kit, group, search->row + row,
+                                                   WEND_LANES));
     list lists[WEND_LANES];
     for (int lane = 0; lane < WEND_LANES; lane++)
       lists[lane] = (list){index + *used + lane, (capacity - *used) / WEND_LANES, 0};

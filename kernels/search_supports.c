@@ -88,9 +88,8 @@ int32_t wend_search_supports(const wend_search *search, const wend_smoothing *sm
     int32_t self[WEND_GROUP];
     const int32_t most = n - k < WEND_GROUP ? n - k : WEND_GROUP;
     for (int32_t i = 0; i < most; i++) self[i] = search->row[todo[k + i]];
-    wend_walk walk;
-    taken = wend_near_gather(&w.near, most, self, &walk);
-    if (!wend_near_fill(&w.near, w.kit, &walk, true)) {
+    taken = wend_near_group(&w.near, w.kit, most, self, 1);
+    if (taken == 0) {
       taken = 1;
       if (!one_solve(&w, self[0], &support[k])) return -1;
     } else if (!group_solve(&w, taken, self, &support[k])) {

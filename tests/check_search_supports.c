@@ -74,9 +74,9 @@ static void compare(const cloud_kind *kind, int dim, unsigned periodic, double u
   trials_set(&c, expected, 1.0);
   ck_assert_int_eq(solve(&c, kernel, todo, m, support), m);
   for (int32_t k = 0; k < m; k++)
-    ck_assert_msg(fabs(support[k] / expected[todo[k]] - 1.0) < TOLERANCE,
-                  "%s %d-D row %d: %.16g not %.16g", kind->name, dim, todo[k], support[k],
-                  expected[todo[k]]);
+    require(fabs(support[k] / expected[todo[k]] - 1.0) < TOLERANCE,
+            "%s %d-D row %d: %.16g not %.16g", kind->name, dim, todo[k], support[k],
+            expected[todo[k]]);
   for (double factor = 1.6; factor < 20.0; factor *= 3.0) {
     trials_set(&c, expected, factor);
     ck_assert_int_eq(solve(&c, kernel, todo, m, again), m);
@@ -84,7 +84,7 @@ static void compare(const cloud_kind *kind, int dim, unsigned periodic, double u
   }
   trials_set(&c, expected, 0.8);
   ck_assert_int_eq(solve(&c, kernel, todo, m, again), 0);
-  for (int32_t k = 0; k < m; k++) ck_assert(again[k] == 0.0);
+  for (int32_t k = 0; k < m; k++) require(again[k] == 0.0, "%s row %d", kind->name, todo[k]);
   free(expected);
   free(support);
   free(again);
@@ -130,8 +130,8 @@ START_TEST(test_any_todo) {
     }
     solve(&c, kernel, todo, c.rows, some);
     for (int32_t i = 0; i < c.rows; i++)
-      ck_assert_msg(some[i] == all[todo[i]], "%s row %d: %.17g not %.17g", k->name, todo[i],
-                    some[i], all[todo[i]]);
+      require(some[i] == all[todo[i]], "%s row %d: %.17g not %.17g", k->name, todo[i], some[i],
+              all[todo[i]]);
     cloud_destroy(&c);
   }
 }

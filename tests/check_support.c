@@ -39,12 +39,12 @@ START_TEST(test_levels) {
   for (int k = 0; k < 10000; k++) {
     const double h = exp(400.0 * (cloud_random(&seed) - 0.5));
     const double level = wend_support_level(h);
-    ck_assert(level >= h && wend_support_level(level) == level);
+    require(level >= h && wend_support_level(level) == level, "%g", h);
     /* The level below is smaller than h; 1e-15 for the rounded constants. */
-    ck_assert(level * pow(2.0, -0.25) < h * (1.0 + 1e-15));
+    require(level * pow(2.0, -0.25) < h * (1.0 + 1e-15), "%g", h);
     const double quarters = 4.0 * log2(level);
-    ck_assert_double_eq_tol(quarters, round(quarters), 1e-11);
-    ck_assert(wend_support_level(nextafter(level, INFINITY)) > level);
+    require(fabs(quarters - round(quarters)) < 1e-11, "%g", h);
+    require(wend_support_level(nextafter(level, INFINITY)) > level, "%g", h);
   }
 }
 END_TEST
@@ -60,8 +60,8 @@ START_TEST(test_root) {
         distances_fill(dim, n, r, (uint64_t)(n + _i));
         const double h = solve(kernel, target, 2.0, n, r);
         const double expected = count_root(kernel->name, dim, target, n, r, 0.02, 2.0);
-        ck_assert_msg(fabs(h / expected - 1.0) < TOLERANCE, "%s %d-D n %d: %.16g not %.16g",
-                      kernel->name, dim, n, h, expected);
+        require(fabs(h / expected - 1.0) < TOLERANCE, "%s %d-D n %d: %.16g not %.16g",
+                kernel->name, dim, n, h, expected);
       }
 }
 END_TEST
@@ -79,7 +79,7 @@ START_TEST(test_trial_independence) {
       for (int32_t j = 0; j < MANY; j++)
         if (r[j] < trial) part[n++] = r[j];
       const double again = solve(kernel, 48.0, trial, n, part);
-      ck_assert_msg(again == h, "%s trial %g: %.17g not %.17g", kernel->name, trial, again, h);
+      require(again == h, "%s trial %g: %.17g not %.17g", kernel->name, trial, again, h);
     }
     const double below = wend_support_level(smallest * 0.8);
     ck_assert(below < h);

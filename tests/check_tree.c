@@ -19,7 +19,7 @@ static void span(const cloud *c, int level, int32_t box, int32_t *begin, int32_t
 static void compare_box(const cloud *c, int32_t b, int32_t begin, int32_t end) {
   double lo[3] = {INFINITY, INFINITY, INFINITY}, hi[3] = {-INFINITY, -INFINITY, -INFINITY};
   double h = 0.0;
-  ck_assert_int_lt(begin, end);
+  require(begin < end, "box %d", b);
   for (int32_t j = begin; j < end; j++) {
     for (int a = 0; a < 3; a++) {
       lo[a] = fmin(lo[a], c->place[j][a]);
@@ -28,10 +28,9 @@ static void compare_box(const cloud *c, int32_t b, int32_t begin, int32_t end) {
     h = fmax(h, c->place[j][3]);
   }
   for (int a = 0; a < 3; a++) {
-    ck_assert(c->tree.lo[b][a] == lo[a]);
-    ck_assert(c->tree.hi[b][a] == hi[a]);
+    require(c->tree.lo[b][a] == lo[a] && c->tree.hi[b][a] == hi[a], "box %d", b);
   }
-  ck_assert(c->tree.lo[b][3] == h);
+  require(c->tree.lo[b][3] == h, "box %d", b);
 }
 
 static const int32_t sizes[] = {0, 1, 7, 8, 9, 63, 64, 65, 511, 512, 513, 4096, 4097, 5000};

@@ -108,18 +108,21 @@ static void fill_huge(int dim, int32_t n, double (*place)[4], uint64_t seed) {
   for (int32_t i = 0; i < n; i++) place[i][3] = i % 40 == 0 ? 0.5 : place[i][3];
 }
 
+/* A speck at a face of the box, its supports near the round-off of positions. */
+static void fill_speck(int dim, int32_t n, double (*place)[4], uint64_t seed) {
+  for (int32_t i = 0; i < n; i++) {
+    const double x = 1.4e-13 * (cloud_random(&seed) - 0.5);
+    place[i][0] = x < 0.0 ? 1.0 + x : x;
+    for (int a = 1; a < dim; a++) place[i][a] = 0.7 + 1.4e-13 * (cloud_random(&seed) - 0.5);
+    place[i][3] = 5e-14 * (1 + i % 3);
+  }
+}
+
 const cloud_kind cloud_kinds[] = {
-    {"uniform", fill_uniform},
-    {"lattice", fill_lattice},
-    {"mixed", fill_mixed},
-    {"cluster", fill_cluster},
-    {"gradient", fill_gradient},
-    {"line", fill_line},
-    {"plane", fill_plane},
-    {"point", fill_point},
-    {"triplets", fill_triplets},
-    {"huge", fill_huge},
-    {NULL, NULL},
+    {"uniform", fill_uniform}, {"lattice", fill_lattice},   {"mixed", fill_mixed},
+    {"cluster", fill_cluster}, {"gradient", fill_gradient}, {"line", fill_line},
+    {"plane", fill_plane},     {"point", fill_point},       {"triplets", fill_triplets},
+    {"huge", fill_huge},       {"speck", fill_speck},       {NULL, NULL},
 };
 
 /* Bits of the coordinates interleaved: neighbours along the curve are near each other. */

@@ -6,6 +6,7 @@
 #include "search.h"
 #include "tree.h"
 
+#include <check.h>
 #include <stdint.h>
 
 /** A set of particles, its tree, and maps as if some of the particles were ghosts. */
@@ -40,5 +41,12 @@ double cloud_distance2(const cloud *c, int32_t i, int32_t j);
 
 /** Next random number of [0, 1) (Steele, Lea & Flood 2014: splitmix64). */
 double cloud_random(uint64_t *state);
+
+/** ck_assert_msg for inner loops: libcheck notes every assertion in a file, which costs far
+ * more than what is asserted. */
+#define require(condition, ...)                                                                \
+  do {                                                                                         \
+    if (!(condition)) ck_abort_msg(__VA_ARGS__);                                               \
+  } while (0)
 
 #endif
