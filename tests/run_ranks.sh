@@ -8,6 +8,7 @@ ranks=${name##*-}
 limit=${WEND_TEST_SECONDS:-300}
 timeout -k 10 "$limit" mpirun -n "$ranks" "${name%-*}" </dev/null
 status=$?
+echo "took $SECONDS s"
 if [ $status -eq 124 ] || [ $status -eq 137 ]; then
   echo "${name%-*} on $ranks ranks did not end within $limit s"
 fi
