@@ -7,6 +7,7 @@
  * +-0.3 spacings, periodic. Times are processor time, the least of the repetitions. Where the
  * program bench_nanoflann stands beside this one, it runs on the same particles. */
 #include "hilbert.h"
+#include "near.h"
 #include "search.h"
 #include "support.h"
 
@@ -152,8 +153,8 @@ int main(int argc, char **argv) {
   for (int k = 1; k < repetitions; k++)
     t = least(t, run(&s, support, index, capacity, first, count));
   const double n = s.n, entries = (double)t.entries;
-  printf("%d particles, %.1f entries a row, %.1f with padding\n", s.n, entries / n,
-         (double)t.slots / n);
+  printf("%d particles, %.1f entries a row, %.1f with padding; kit: %s\n", s.n, entries / n,
+         (double)t.slots / n, wend_near_kit_best()->name);
   printf("tree                            %8.4f s  %7.2f ns/particle\n", t.tree,
          1e9 * t.tree / n);
   printf("supports                        %8.4f s  %7.1f ns/particle  %5.1f M neighbours/s\n",
