@@ -82,8 +82,8 @@ static void put_costs(FILE *out, const wend_team *team, const wend_run *run, con
           run->imbalance);
   fprintf(out, "  seconds          supports %.3g, pairs %.3g, faces %.3g, a stage %.3g\n",
           f->supports, f->pairs, f->faces, f->stage);
-  fprintf(out, "  peak memory      %.3g kB a particle\n",
-          (double)f->memory / (double)run->total);
+  fprintf(out, "  peak memory      %.3g kB a particle, %.3g MB in all\n",
+          (double)f->memory / (double)run->total, (double)f->memory / 1024);
 }
 
 static const char *volume_text(wend_volume_origin origin) {
@@ -95,25 +95,24 @@ static const char *volume_text(wend_volume_origin origin) {
 static void put_resolution(FILE *out, const wend_run *run, const figures *f) {
   const wend_resolution *r = &f->resolution;
   const wend_geometry_report *g = &run->geometry.report;
-  const wend_units *units = &run->setup.units;
-  const double cgs =
-      1e4 * wend_units_scale(units, wend_quantity_find(WEND_Q_DIFFUSIVITY)->dimension);
+  const double cgs = 1e4 * wend_units_scale(&run->setup.units,
+                                            wend_quantity_find(WEND_Q_DIFFUSIVITY)->dimension);
   fprintf(out, "\nresolution at the end (means over CR energy)\n");
   fprintf(out,
           "  unresolved       %.3g of the CR energy lies where the support exceeds |e/g|\n",
           r->unresolved);
-  fprintf(out, "  across the field %.3g cm^2/s numerical, %.3g cm^2/s physical (along: %.3g)\n",
+  fprintf(out,
+          "  across the field %.3g cm^2/s numerical, %.3g cm^2/s physical; along %.3g cm^2/s\n",
           cgs * r->smearing, cgs * r->kappa_perp, cgs * r->kappa_par);
   fprintf(
       out,
-      "                   numerical: %.2g kappa_par (H/s)^2, s = e/|grad_perp e|, as measured\n"
-      "                   by `wend prove blob` at s = 6.4 spacings\n",
+      "                   numerical: %.2g kappa_par (H/s)^2, s = e/|grad_perp e|: scaled from\n"
+      "                   5e-4 at s = 6.4 spacings in 2-D, as measured by `wend prove blob`\n",
       wend_resolution_smearing);
-  fprintf(
-      out,
-      "  faces            closure %.2e, raw %.2e; volume condition %.5f, raw %.5f, rms %.2e\n",
-      g->closure, g->closure_raw, g->span_mean, g->span_raw, g->span_rms);
-  fprintf(out, "  volumes          %s\n", volume_text(run->volumes));
+  fprintf(out, "  faces            closure %.2e, raw %.2e\n", g->closure, g->closure_raw);
+  fprintf(out, "  volume condition mean %.5f, raw %.5f, rms %.2e\n", g->span_mean, g->span_raw,
+          g->span_rms);
+  fprintf(out, "  volumes from     %s\n", volume_text(run->volumes));
   fprintf(out, "  gradients        %.3g of the particles fell back to the isotropic form\n",
           (double)g->fallbacks / (double)run->total);
   fprintf(out, "  limiter          works on %.3g of the pairs\n", r->limited);
