@@ -64,14 +64,16 @@ static wend_status measure_volumes(wend_team *team, const wend_particles *p, wen
   else
     wend_volume_estimate(&g->near.pairs, g->near.all, &g->domain, g->smoothing,
                          (const double(*)[4])g->near.place, g->volume);
-  return wend_halo_exchange(team, &g->near.halo, g->volume, 1, 1, sizeof(double));
+  wend_halo_exchange(team, &g->near.halo, g->volume, 1, 1, sizeof(double));
+  return wend_agree(team);
 }
 
 static wend_status measure_gradients(wend_team *team, wend_geometry *g) {
   g->report.fallbacks =
       wend_gradient_matrices(&g->near.pairs, g->near.all, &g->domain, g->smoothing,
                              (const double(*)[4])g->near.place, g->inverse);
-  return wend_halo_exchange(team, &g->near.halo, g->inverse, 6, 6, sizeof(double));
+  wend_halo_exchange(team, &g->near.halo, g->inverse, 6, 6, sizeof(double));
+  return wend_agree(team);
 }
 
 static bool all_periodic(const wend_domain *domain) {

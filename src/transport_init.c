@@ -40,15 +40,16 @@ static void magnetise(wend_team *team, const wend_settings *settings, const wend
 
 static wend_status exchange_coefficients(wend_team *team, wend_transport *t) {
   wend_halo *halo = &t->geometry->near.halo;
-  wend_status status = wend_halo_exchange(team, halo, t->field, 3, 3, sizeof(double));
-  if (status == WEND_OK)
-    status = wend_halo_exchange(team, halo, t->kappa, 2, 2, sizeof(double));
+  wend_halo_exchange(team, halo, t->field, 3, 3, sizeof(double));
+  wend_halo_exchange(team, halo, t->kappa, 2, 2, sizeof(double));
+  const wend_status status = wend_agree(team);
+  if (status != WEND_OK) return status;
   double across = 0;
   for (int32_t i = 0; i < t->geometry->near.owned; i++) across = fmax(across, t->kappa[i][1]);
   wend_team_max(team, 1, &across);
   t->along = across == 0;
   t->width = t->along ? 2 : 4;
-  return status;
+  return WEND_OK;
 }
 
 static bool any_open(const wend_domain *domain) {
@@ -109,13 +110,20 @@ static wend_status allocate(wend_team *team, wend_transport *t) {
   return wend_agree(team);
 }
 
+/* One exchange of the widest field makes all room that those of a rate need: they must not fail,
+ * since nobody agrees on it inside a stage. */
 static wend_status allocate_state(wend_team *team, wend_transport *t) {
-  const wend_neighbours *near = &t->geometry->near;
+  wend_status status = WEND_OK;
+  wend_neighbours *near = &t->geometry->near;
   t->antidiffusive =
       wend_allocate(team, wend_neighbours_entries(near), sizeof *t->antidiffusive);
   t->state = wend_allocate(team, (int64_t)near->local * t->width, sizeof *t->state);
   t->ratio = wend_allocate(team, near->local, sizeof *t->ratio);
-  return wend_agree(team);
+  WEND_TRY(wend_agree(team));
+  wend_halo_exchange(team, &near->halo, t->state, t->width, t->width - 1, sizeof(double));
+  WEND_TRY(wend_agree(team));
+done:
+  return status;
 }
 
 wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
