@@ -4,8 +4,8 @@ import numpy as np
 
 import run_tool as rt
 
-# A super-step of 21 stages at its longest, 480 of them.
-TEXT = ("particles: blob.h5\noutput: {folder: FOLDER, name: x}\ntime: {end: 1 Gyr, steps: 480}\n"
+# A super-step of 21 stages at its longest, 520 of them.
+TEXT = ("particles: blob.h5\noutput: {folder: FOLDER, name: x}\ntime: {end: 1 Gyr, steps: 520}\n"
         "diffusion: {parallel: 3e28 cm^2/s, perpendicular: 3e26 cm^2/s}\nstepping: {fixed: 1 Gyr}\n")
 
 
