@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * operator.c: pair coefficients of diffusion along and across the field. */
 #include "operator.h"
+#include "slope.h"
 
 static double dot(const double *a, const double *b) {
   return a[0] * b[0] + a[1] * b[1] + a[2] * b[2];
@@ -9,6 +10,11 @@ static double dot(const double *a, const double *b) {
 static void entry_vector(float *const column[3], int64_t k, double vector[3]) {
   for (int d = 0; d < 3; d++) vector[d] = column[d][k];
 }
+
+/* Most of sum_j a_ij, in kappa V / H^2: the mean on a jittered lattice is 9.5, single particles
+ * reach twice that and would set the step of all. Any sum >= 0 keeps the limiter's promise; a
+ * smaller one limits more. */
+static const double room_most = 10;
 
 /* a_ij and s_ij of one entry; every product and sum is even under the exchange of the ends. */
 static void low_order(const wend_operator_source *s, const double *area, const double *arm,
@@ -20,7 +26,8 @@ static void low_order(const wend_operator_source *s, const double *area, const d
   }
   const double *bi = s->field[i], *bj = s->field[j];
   const double ri = dot(bi, arm), rj = dot(bj, arm);
-  const double excess = ((s->kappa[i][0] - s->kappa[i][1]) + (s->kappa[j][0] - s->kappa[j][1])) / 2;
+  const double excess =
+      ((s->kappa[i][0] - s->kappa[i][1]) + (s->kappa[j][0] - s->kappa[j][1])) / 2;
   const double across = (s->kappa[i][1] + s->kappa[j][1]) / 2;
   const double along = excess * (dot(area, bi) * ri + dot(area, bj) * rj) / (2 * r2);
   const double isotropic = across * dot(area, arm) / r2;
@@ -31,13 +38,21 @@ static void low_order(const wend_operator_source *s, const double *area, const d
   *kept = (float)fmin(a, fmax(0, share * along + isotropic));
 }
 
+/* What a pair adds to the room: diffusion along the field counts once, across it in each
+ * dimension. */
+static double room_of(const wend_operator_source *s, int32_t i, int32_t j) {
+  const double along = (s->kappa[i][0] + s->kappa[j][0]) / 2;
+  const double across = (s->kappa[i][1] + s->kappa[j][1]) / 2;
+  return fmax(0, along - across) + s->face.domain->dim * across;
+}
+
 void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
                              const wend_operator_source *source, const wend_faces *faces,
                              float *restrict kept, double *restrict sum_full,
                              double *restrict sum_both) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
-    double full[WEND_LANES] = {0}, both[WEND_LANES] = {0};
+    double full[WEND_LANES] = {0}, left[WEND_LANES] = {0}, widest[WEND_LANES] = {0};
     const int lanes = wend_pairs_lanes(pairs, slice);
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
       const int lane = (int)(k % WEND_LANES);
@@ -48,17 +63,22 @@ void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
       float a;
       low_order(source, area, arm, i, pairs->index[k], &a, &kept[k]);
       full[lane] += a;
-      both[lane] += (double)a + kept[k];
+      left[lane] += kept[k];
+      widest[lane] = fmax(widest[lane], room_of(source, i, pairs->index[k]));
     }
     for (int lane = 0; lane < lanes; lane++) {
-      sum_full[slice * WEND_LANES + lane] = full[lane];
-      sum_both[slice * WEND_LANES + lane] = both[lane];
+      const int32_t i = slice * WEND_LANES + lane;
+      const double h = source->face.place[i][3];
+      const double room = room_most * widest[lane] * source->face.volume[i] / (h * h);
+      sum_full[i] = fmin(full[lane], room);
+      sum_both[i] = sum_full[i] + left[lane];
     }
   }
 }
 
 /* c_ij = M_i^-1 r_ij w_ij of one entry: zero beyond the row's own support. */
-static void gradient_weight(const wend_face_source *s, const double *arm, int32_t i, double c[3]) {
+static void gradient_weight(const wend_face_source *s, const double *arm, int32_t i,
+                            double c[3]) {
   const double h = s->place[i][3], *m = s->inverse[i];
   const double q = sqrt(dot(arm, arm)) / h;
   double w;
@@ -69,19 +89,29 @@ static void gradient_weight(const wend_face_source *s, const double *arm, int32_
   c[2] = w * (m[2] * arm[0] + m[4] * arm[1] + m[5] * arm[2]);
 }
 
+static void fit_slopes(const wend_pairs *pairs, int32_t slice,
+                       const wend_operator_source *source, float *const arm[3],
+                       wend_slope fit[WEND_LANES]) {
+  for (int lane = 0; lane < wend_pairs_lanes(pairs, slice); lane++) {
+    const int32_t i = slice * WEND_LANES + lane;
+    wend_slope_fit(pairs, &source->face, arm, i, source->field[i], &fit[lane]);
+  }
+}
+
 void wend_operator_slope(const wend_pairs *pairs, wend_slices slices,
                          const wend_operator_source *source, float *const arm[3],
                          float *restrict slope) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     const int lanes = wend_pairs_lanes(pairs, slice);
+    wend_slope fit[WEND_LANES];
+    fit_slopes(pairs, slice, source, arm, fit);
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
-      const int lane = (int)(k % WEND_LANES);
-      const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
-      double r[3], c[3];
+      const int lane = (int)(k % WEND_LANES) < lanes ? (int)(k % WEND_LANES) : 0;
+      double r[3];
       entry_vector(arm, k, r);
-      gradient_weight(&source->face, r, i, c);
-      slope[k] = (float)dot(source->field[i], c);
+      slope[k] =
+          (float)wend_slope_weight(&source->face, &fit[lane], slice * WEND_LANES + lane, r);
     }
   }
 }
@@ -109,13 +139,17 @@ void wend_operator_gradient(const wend_pairs *pairs, wend_slices slices,
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     const int lanes = wend_pairs_lanes(pairs, slice);
+    wend_slope fit[WEND_LANES];
+    fit_slopes(pairs, slice, source, arm, fit);
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k++) {
-      const int lane = (int)(k % WEND_LANES);
-      const int32_t i = slice * WEND_LANES + (lane < lanes ? lane : 0);
+      const int lane = (int)(k % WEND_LANES) < lanes ? (int)(k % WEND_LANES) : 0;
+      const int32_t i = slice * WEND_LANES + lane;
       double r[3], c[3];
       entry_vector(arm, k, r);
       gradient_weight(&source->face, r, i, c);
-      for (int d = 0; d < 3; d++) gradient[d][k] = (float)c[d];
+      const double *b = source->field[i];
+      const double more = wend_slope_weight(&source->face, &fit[lane], i, r) - dot(b, c);
+      for (int d = 0; d < 3; d++) gradient[d][k] = (float)(c[d] + b[d] * more);
     }
   }
 }
@@ -124,8 +158,8 @@ static double escape_rate(const wend_operator_source *s, int32_t i, const double
   const wend_domain *domain = s->face.domain;
   const double m2 = dot(m, m);
   if (!(m2 > 0)) return 0;
-  const double width = domain->dim == 2 ? sqrt(s->face.volume[i] / domain->thickness)
-                                        : cbrt(s->face.volume[i]);
+  const double width =
+      domain->dim == 2 ? sqrt(s->face.volume[i] / domain->thickness) : cbrt(s->face.volume[i]);
   const double mb = dot(m, s->field[i]);
   return (s->kappa[i][0] * mb * mb + s->kappa[i][1] * (m2 - mb * mb)) / (sqrt(m2) * width / 2);
 }

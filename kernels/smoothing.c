@@ -71,6 +71,24 @@ WEND_CLONES static void slope_cubic_spline(int n, const double *restrict q,
   }
 }
 
+WEND_CLONES static void shape_count(int n, const double *restrict q, double *restrict s) {
+  for (int i = 0; i < n; i++) {
+    const double q2 = q[i] * q[i];
+    s[i] = positive_part(1.0 - q2 * q2);
+  }
+}
+
+/* The slope jumps at q = 1: zero from there on. */
+WEND_CLONES static void slope_count(int n, const double *restrict q, double *restrict ds) {
+  for (int i = 0; i < n; i++) ds[i] = q[i] < 1.0 ? -4.0 * (q[i] * q[i] * q[i]) : 0.0;
+}
+
+const wend_smoothing *wend_smoothing_count(void) {
+  static const wend_smoothing count = {
+      "count", {3.0 / (2.0 * WEND_PI), 21.0 / (16.0 * WEND_PI)}, shape_count, slope_count};
+  return &count;
+}
+
 /* Norms: the integral of s over the unit disc and ball is one over these. */
 static const wend_smoothing table[] = {
     {"wendland-c2",

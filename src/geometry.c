@@ -12,7 +12,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-static double default_neighbours(int dim) { return dim == 2 ? 20 : 48; }
+static double default_neighbours(int dim) { return dim == 2 ? 22 : 48; }
 
 static wend_status find_supports(wend_team *team, const wend_settings *settings,
                                  const wend_particles *p, wend_geometry *g, double (*place)[4]) {
@@ -24,7 +24,7 @@ static wend_status find_supports(wend_team *team, const wend_settings *settings,
     const double target =
         settings->neighbours > 0 ? settings->neighbours : default_neighbours(g->domain.dim);
     const wend_status status =
-        wend_supports_find(team, &g->domain, g->smoothing, target, p, place);
+        wend_supports_find(team, &g->domain, wend_smoothing_count(), target, p, place);
     if (status != WEND_OK) return status;
   }
   return wend_supports_check(team, &g->domain, p, (const double(*)[4])place);

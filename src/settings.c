@@ -12,6 +12,7 @@ wend_settings wend_settings_default(void) {
       .fix_volumes = true,
       .angle_power = 8,
       .angle_share = 0.6,
+      .sharpen = true,
       .limited = true,
       .isotropic_unmagnetised = true,
       .supertime = "rkg2",

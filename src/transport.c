@@ -2,7 +2,7 @@
  * transport.c: the right-hand side of CR transport, halos overlapped with interior work. */
 #include "transport.h"
 #include "exchange.h"
-#include "operator.h"
+#include "sharpen.h"
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
@@ -32,6 +32,19 @@ static void flux(wend_transport *t, wend_slices slices) {
                             (const double(*)[2])t->kappa, (double(*)[4])t->state);
 }
 
+static void sharpen(wend_transport *t, wend_slices slices) {
+  wend_sharpen_flux(&t->geometry->near.pairs, slices, t->mu, t->state, t->width, t->sharp);
+}
+
+/* Sharpened fluxes take the place of the plain ones once no row needs those any more. */
+static wend_status sharpen_fluxes(wend_team *team, wend_transport *t) {
+  const int width = t->width - 1;
+  const wend_status status = overlapped(team, t, t->state + 1, t->width, width, sharpen);
+  for (int64_t i = 0; i < t->geometry->near.owned; i++)
+    memcpy(&t->state[i * t->width + 1], &t->sharp[i * width], (size_t)width * sizeof(double));
+  return status;
+}
+
 static void ratios(wend_transport *t, wend_slices slices) {
   const wend_pairs *pairs = &t->geometry->near.pairs;
   if (t->along)
@@ -43,7 +56,6 @@ static void ratios(wend_transport *t, wend_slices slices) {
   if (t->limited) return;
   for (int32_t i = 0; i < t->geometry->near.owned; i++) t->ratio[i][0] = t->ratio[i][1] = 1;
 }
-
 
 static void exchange(const wend_transport *t, wend_slices slices, double *rate) {
   wend_exchange_rate(&t->geometry->near.pairs, slices, t->kept, t->state, t->width,
@@ -57,14 +69,15 @@ static void let_escape(const wend_transport *t, double *rate, double *escaped) {
   }
 }
 
-wend_status wend_transport_rate(wend_team *team, wend_transport *transport, const double *energy,
-                                double *rate, double *escaped) {
+wend_status wend_transport_rate(wend_team *team, wend_transport *transport,
+                                const double *energy, double *rate, double *escaped) {
   wend_transport *t = transport;
   wend_halo *halo = &t->geometry->near.halo;
   for (int32_t i = 0; i < t->geometry->near.owned; i++)
     t->state[(int64_t)i * t->width] = energy[i] / t->geometry->volume[i];
   t->applications++;
   wend_status status = overlapped(team, t, t->state, t->width, 1, flux);
+  if (status == WEND_OK && t->mu != NULL) status = sharpen_fluxes(team, t);
   if (status != WEND_OK) return status;
   status = overlapped(team, t, t->state + 1, t->width, t->width - 1, ratios);
   if (status != WEND_OK) return status;
@@ -96,6 +109,8 @@ void wend_transport_reset(wend_transport *transport) {
   free(t->beta);
   for (int d = 0; d < 3; d++) free(t->gradient[d]);
   free(t->kept);
+  free(t->mu);
+  free(t->sharp);
   free(t->sum_full);
   free(t->escape);
   free(t->state);

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * transport_init.c: builds the transport operator on a geometry. */
 #include "operator.h"
+#include "sharpen.h"
 #include "transport.h"
 #include <inttypes.h>
 #include <math.h>
@@ -11,8 +12,8 @@ static double value_of(const wend_particles *p, wend_column column, int32_t i) {
   return p->column[column] != NULL ? p->column[column][i] : 0;
 }
 
-/* Unit field, and the coefficients along and across it; where B = 0 both are the isotropic mean of a
- * tangled field, (kappa_par + 2 kappa_perp)/3, or nothing. */
+/* Unit field, and the coefficients along and across it; where B = 0 both are the isotropic mean
+ * of a tangled field, (kappa_par + 2 kappa_perp)/3, or nothing. */
 static void magnetise(wend_team *team, const wend_settings *settings, const wend_particles *p,
                       wend_transport *t) {
   for (int32_t i = 0; i < p->n; i++) {
@@ -29,7 +30,8 @@ static void magnetise(wend_team *team, const wend_settings *settings, const wend
     const double par = value_of(p, WEND_KPAR, i), perp = value_of(p, WEND_KPERP, i);
     if (!(par >= 0) || !(perp >= 0) || isinf(par) || isinf(perp) || !isfinite(length))
       wend_fail(team, WEND_ERR_PARTICLES,
-                "particle %" PRIu64 ": kappa_par %g, kappa_perp %g, B (%g, %g, %g): coefficients "
+                "particle %" PRIu64
+                ": kappa_par %g, kappa_perp %g, B (%g, %g, %g): coefficients "
                 "must be finite and not negative, and the field finite",
                 p->id[i], par, perp, b[0], b[1], b[2]);
     const double mean = settings->isotropic_unmagnetised ? (par + 2 * perp) / 3 : 0;
@@ -59,15 +61,19 @@ static bool any_open(const wend_domain *domain) {
 /* Columns come and go in this order to keep the peak of memory low; gradients take the place of
  * arms, and the inverse matrices have served. */
 static wend_status build_pairs(wend_team *team, const wend_operator_source *source,
-                               wend_transport *t) {
+                               bool sharpen, wend_transport *t) {
   wend_geometry *g = t->geometry;
   const int64_t entries = wend_neighbours_entries(&g->near);
   const wend_pairs *pairs = &g->near.pairs;
   free(g->faces.weight);
   g->faces.weight = NULL;
+  if (sharpen) t->mu = wend_allocate(team, entries, sizeof(float));
   if (t->along) t->slope = wend_allocate(team, entries, sizeof(float));
   const wend_status status = wend_agree(team);
   if (status != WEND_OK) return status;
+  if (t->mu != NULL)
+    wend_sharpen_weights(pairs, g->near.all, &source->face, source->field, t->along,
+                         g->faces.arm, t->mu);
   if (t->along)
     wend_operator_slope(pairs, g->near.all, source, g->faces.arm, t->slope);
   else
@@ -110,8 +116,8 @@ static wend_status allocate(wend_team *team, wend_transport *t) {
   return wend_agree(team);
 }
 
-/* One exchange of the widest field makes all room that those of a rate need: they must not fail,
- * since nobody agrees on it inside a stage. */
+/* One exchange of the widest field makes all room that those of a rate need: they must not
+ * fail, since nobody agrees on it inside a stage. */
 static wend_status allocate_state(wend_team *team, wend_transport *t) {
   wend_status status = WEND_OK;
   wend_neighbours *near = &t->geometry->near;
@@ -119,6 +125,8 @@ static wend_status allocate_state(wend_team *team, wend_transport *t) {
       wend_allocate(team, wend_neighbours_entries(near), sizeof *t->antidiffusive);
   t->state = wend_allocate(team, (int64_t)near->local * t->width, sizeof *t->state);
   t->ratio = wend_allocate(team, near->local, sizeof *t->ratio);
+  if (t->mu != NULL)
+    t->sharp = wend_allocate(team, (int64_t)near->owned * (t->width - 1), sizeof *t->sharp);
   WEND_TRY(wend_agree(team));
   wend_halo_exchange(team, &near->halo, t->state, t->width, t->width - 1, sizeof(double));
   WEND_TRY(wend_agree(team));
@@ -155,7 +163,7 @@ wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
     wend_operator_escape(&near->pairs, near->all, &source, &geometry->faces, geometry->surface,
                          t->escape);
   limit_step(team, t, sum_both);
-  WEND_TRY(build_pairs(team, &source, t));
+  WEND_TRY(build_pairs(team, &source, settings->sharpen, t));
   WEND_TRY(allocate_state(team, t));
 done:
   free(sum_both);

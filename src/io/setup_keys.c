@@ -118,7 +118,7 @@ static const wend_key keys[] = {
 
     {"geometry.smoothing", NAME, AT(settings.smoothing), .names = smoothing_name,
      .meaning = "smoothing kernel"},
-    {"geometry.neighbours", NUMBER(6, 1000), .fallback = "(20 in 2-D, 48 in 3-D)",
+    {"geometry.neighbours", NUMBER(6, 1000), .fallback = "(22 in 2-D, 48 in 3-D)",
      AT(settings.neighbours),
      .meaning = "neighbours within the support, the particle itself included"},
     {"geometry.closure", NUMBER(0, 1), .positive = true, AT(settings.closure),
@@ -133,6 +133,8 @@ static const wend_key keys[] = {
      .meaning = "power of the squared cosine between pair and field in the low-order exchange"},
     {"exchange.angle_share", NUMBER(0, 1), AT(settings.angle_share),
      .meaning = "share of the low-order exchange that is kept along the field"},
+    {"exchange.sharpen", SWITCH, AT(settings.sharpen),
+     .meaning = "undo the second-order smoothing of slopes and faces; no saves a fifth of a stage"},
 
     {"stepping.scheme", NAME, AT(settings.supertime), .names = scheme_name,
      .meaning = "super-time-stepping family"},
