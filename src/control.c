@@ -19,12 +19,15 @@ const char *wend_cause_text(wend_cause cause) {
   return text[cause];
 }
 
+/* A step that would leave less than this share of itself takes it too: times are rounded. */
+static const double sliver = 1e-12;
+
 /* Down to a power of 2^(1/4): small noise in the estimate does not change the step. */
 static double round_down(double factor) { return exp2(floor(4 * log2(factor)) / 4); }
 
 static int fit_stages(const wend_settings *settings, const wend_supertime *family,
                       double explicit_step, double step) {
-  const double ratio = step / (settings->margin * explicit_step);
+  const double ratio = step / (settings->margin * explicit_step) * (1 - 2 * sliver);
   return ratio <= 1 ? 1 : wend_supertime_fit(family, ratio);
 }
 
@@ -48,7 +51,7 @@ wend_control wend_control_begin(const wend_settings *settings, double explicit_s
 
 /* The remaining time, or half of it where one step would leave a sliver. */
 static double not_beyond(double step, double remaining) {
-  if (step >= remaining * (1 - 1e-12)) return remaining;
+  if (step >= remaining * (1 - sliver)) return remaining;
   return 2 * step > remaining ? remaining / 2 : step;
 }
 
@@ -66,10 +69,8 @@ wend_plan wend_control_plan(const wend_control *control, const wend_settings *se
     plan.cause = WEND_CAUSE_STAGES;
   }
   const double step = not_beyond(plan.step, remaining);
-  if (step < plan.step) {
-    plan.step = step;
-    plan.cause = WEND_CAUSE_OUTPUT;
-  }
+  if (step < plan.step) plan.cause = WEND_CAUSE_OUTPUT;
+  plan.step = step;
   plan.stages = fit_stages(settings, family, explicit_step, plan.step);
   return plan;
 }
