@@ -1,11 +1,12 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * pairs.h: neighbour lists in slices of eight rows (sliced ELLPACK).
  *
- * Row i is an owned particle; its entries are the particles j with r_ij < max(H_i, H_j), j != i, in
- * canonical order (Hilbert key, id). Entry m of the eight rows of a slice lie side by side, so
- * that vectors run across rows and each lane sums its own row in list order: any vector width gives
- * the same bits. Short rows are padded with their own index; coefficient columns hold zero there.
- * Rows beyond n in the last slice are padding throughout and point at row n - 1. */
+ * Row i is an owned particle; its entries are the particles j with r_ij < max(H_i, H_j), j !=
+ * i, in canonical order (Hilbert key, id). Entry m of the eight rows of a slice lie side by
+ * side, so that vectors run across rows and each lane sums its own row in list order: any
+ * vector width gives the same bits. Short rows are padded with their own index; coefficient
+ * columns hold zero there. Rows beyond n in the last slice are padding throughout and point at
+ * row n - 1. */
 #ifndef WEND_KERNELS_PAIRS_H
 #define WEND_KERNELS_PAIRS_H
 
@@ -18,7 +19,7 @@ typedef struct wend_pairs {
   int32_t slices;       /**< (n + 7) / 8 */
   const int64_t *first; /**< [slices + 1] first entry of each slice, multiples of 8 */
   const int32_t *count; /**< [8 slices] entries of each row, without padding */
-  const int32_t *index; /**< [first[slices]] storage index of the neighbour: owned, then ghosts */
+  const int32_t *index; /**< [first[slices]] neighbour: owned, then ghosts */
 } wend_pairs;
 
 /** A choice of slices to work on: interior ones while a halo is in flight, then the rest. */

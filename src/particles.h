@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * particles.h: the table of particles a rank owns, one column a quantity.
  *
- * Values are in the run's own units (units.h of the file layer); the library attaches no unit to
- * them. A column that is absent is NULL. */
+ * Values are in the run's own units (units.h of the file layer); the library attaches no unit
+ * to them. A column that is absent is NULL. */
 #ifndef WEND_SRC_PARTICLES_H
 #define WEND_SRC_PARTICLES_H
 
@@ -10,18 +10,18 @@
 #include <stdint.h>
 
 typedef enum wend_column {
-  WEND_X,         /**< position; z is 0 in 2-D */
+  WEND_X, /**< position; z is 0 in 2-D */
   WEND_Y,
   WEND_Z,
-  WEND_BX,        /**< magnetic field */
+  WEND_BX, /**< magnetic field */
   WEND_BY,
   WEND_BZ,
-  WEND_VX,        /**< velocity: carried along, not used by static transport */
+  WEND_VX, /**< velocity: carried along, not used by static transport */
   WEND_VY,
   WEND_VZ,
   WEND_MASS,
-  WEND_DENSITY,   /**< mass density */
-  WEND_SUPPORT,   /**< support radius H */
+  WEND_DENSITY, /**< mass density */
+  WEND_SUPPORT, /**< support radius H */
   WEND_VOLUME,
   WEND_ENERGY,    /**< CR energy of the particle, E */
   WEND_INTERNAL,  /**< specific internal energy of the gas */
