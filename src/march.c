@@ -4,6 +4,7 @@
  * Unknowns are E and, where a surface is open, the energy escaped from each particle: one block
  * each, advanced by the same stages and thrown away together when an attempt fails. */
 #include "march.h"
+#include "local_bounds.h"
 #include "stage.h"
 #include "total.h"
 #include <math.h>
@@ -60,13 +61,31 @@ static void range(wend_team *team, const wend_march *m, const double *energy, do
   *high = most[1];
 }
 
-/* Escape lowers the least value legally; then only e < 0 and the upper end count. Without a limiter
- * there are no bounds to keep but e >= 0. */
+static double round_off(const wend_march *m) {
+  return slack * fmax(fabs(m->low), fabs(m->high));
+}
+
+/* Escape lowers the least value legally; then only e < 0 and the upper end count. Without a
+ * limiter there are no bounds to keep but e >= 0. */
 static bool within(const wend_march *m, double low, double high) {
   if (!m->settings.limited) return low >= 0 && isfinite(high);
-  const double give = slack * fmax(fabs(m->low), fabs(m->high));
+  const double give = round_off(m);
   const double floor = m->unknowns > 1 ? 0 : m->low - give;
   return low >= 0 && low >= floor && high <= m->high + give;
+}
+
+/* Tests an attempt: the range of all values always, the range of each neighbourhood if asked
+ * for. */
+static wend_status test_bounds(wend_team *team, wend_march *m, const wend_plan *plan,
+                               double *low, double *high, bool *held) {
+  double excess = 0;
+  range(team, m, m->trial, low, high);
+  *held = within(m, *low, *high);
+  if (!*held || !m->settings.local_bounds || m->unknowns > 1) return WEND_OK;
+  const wend_status status = wend_local_bounds_excess(
+      team, m->transport->geometry, plan->stages, m->energy, m->trial, &excess);
+  *held = excess <= round_off(m);
+  return status;
 }
 
 /* Estimated error over the total energy. */
@@ -107,10 +126,11 @@ wend_status wend_march_step(wend_team *team, wend_march *march, double until) {
       wend_control_plan(&m->control, &m->settings, m->family, explicit_step, remaining);
   double low, high;
   for (;;) {
+    bool held;
     status = run_stages(team, m, &plan);
+    if (status == WEND_OK) status = test_bounds(team, m, &plan, &low, &high, &held);
     if (status != WEND_OK) return status;
-    range(team, m, m->trial, &low, &high);
-    if (!within(m, low, high)) {
+    if (!held) {
       if (wend_control_shorten(&m->control, &m->settings, m->family, explicit_step, &plan))
         continue;
       wend_fail(

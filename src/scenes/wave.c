@@ -60,28 +60,49 @@ done:
   return status;
 }
 
-wend_status wend_wave_prove(wend_team *team, const wend_scene_options *options) {
-  static const int sides[] = {32, 64};
-  static const double bars[] = {0.02, 0.003};
+/* The seed that is farthest off. */
+typedef struct wave_figures {
+  double along, across;
+} wave_figures;
+
+static wend_status measure_seeds(wend_team *team, int side, double jitter, int first, int last,
+                                 wave_figures *worst) {
   const double angle = 0.5, exact = cos(angle) * cos(angle);
-  const double jitter = options->jitter >= 0 ? options->jitter : 0.2;
-  const int seed = options->seed_first > 0 ? options->seed_first : 1;
-  wend_verdict verdict = {0, 0};
-  wend_scene_say(team, "wave: decay rate over kappa (k.b)^2, and what moves across over it\n"
-                       " a wavelength   along      across\n");
-  for (int k = 0; k < 2; k++) {
-    const int side = options->side > 0 ? options->side : sides[k];
+  *worst = (wave_figures){1, 0};
+  for (int seed = first; seed <= last; seed++) {
     double along, across;
     wend_status status = measure(team, side, jitter, seed, angle, angle, &along);
     if (status == WEND_OK) status = measure(team, side, jitter, seed, M_PI / 2, angle, &across);
     if (status != WEND_OK) return status;
     along /= exact;
     across /= exact;
-    wend_scene_say(team, "%13d  %9.5f  %9.2e\n", side, along, across);
-    if (options->side > 0 || options->jitter >= 0) return WEND_OK;
-    wend_verdict_most(team, &verdict, fabs(along - 1), bars[k], "%d a wavelength: |rate - 1|",
+    wend_scene_say(team, "%13d  %4d  %9.5f  %9.2e\n", side, seed, along, across);
+    if (fabs(along - 1) > fabs(worst->along - 1)) worst->along = along;
+    worst->across = fmax(worst->across, fabs(across));
+  }
+  return WEND_OK;
+}
+
+wend_status wend_wave_prove(wend_team *team, const wend_scene_options *options) {
+  static const int sides[] = {32, 64};
+  static const double bars[] = {0.02, 0.003};
+  const double jitter = options->jitter >= 0 ? options->jitter : 0.2;
+  const int first = options->seed_first > 0 ? options->seed_first : 1;
+  const int last = options->seed_first > 0 ? options->seed_last : 5;
+  const bool own = options->side > 0 || options->jitter >= 0 || options->seed_first > 0;
+  wend_verdict verdict = {0, 0};
+  wend_scene_say(team, "wave: decay rate over kappa (k.b)^2, and what moves across over it\n"
+                       " a wavelength  seed   along      across\n");
+  for (int k = 0; k < (own ? 1 : 2); k++) {
+    wave_figures worst;
+    const int side = options->side > 0 ? options->side : sides[k];
+    const wend_status status = measure_seeds(team, side, jitter, first, last, &worst);
+    if (status != WEND_OK) return status;
+    if (own) return WEND_OK;
+    wend_verdict_most(team, &verdict, fabs(worst.along - 1), bars[k],
+                      "%d a wavelength: |rate - 1|, worst seed", side);
+    wend_verdict_most(team, &verdict, worst.across, 1e-3, "%d a wavelength: across, worst seed",
                       side);
-    wend_verdict_most(team, &verdict, fabs(across), 1e-3, "%d a wavelength: across", side);
   }
   return wend_verdict_close(team, &verdict, "wave");
 }
