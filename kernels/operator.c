@@ -64,7 +64,9 @@ void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
       low_order(source, area, arm, i, pairs->index[k], &a, &kept[k]);
       full[lane] += a;
       left[lane] += kept[k];
-      widest[lane] = fmax(widest[lane], room_of(source, i, pairs->index[k]));
+      /* Padding does not count: how much of it there is depends on the ranks. */
+      if (pairs->index[k] != i)
+        widest[lane] = fmax(widest[lane], room_of(source, i, pairs->index[k]));
     }
     for (int lane = 0; lane < lanes; lane++) {
       const int32_t i = slice * WEND_LANES + lane;
