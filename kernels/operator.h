@@ -26,7 +26,9 @@ typedef struct wend_operator_source {
   double angle_share;       /**< phi in [0, 1] */
 } wend_operator_source;
 
-/** Computes s_ij [entries], and [rows] sum_j a_ij and sum_j (a_ij + s_ij). Local, no overlap.
+/** Computes s_ij [entries], and [rows] the limiter's room, min(sum_j a_ij, 10 kappa V_i/H_i^2),
+ * and the room + sum_j s_ij, which sets the explicit step. kappa is the largest of the row's
+ * pairs, max(0, kappa_par - kappa_perp) + D kappa_perp of the pair's means. Local, no overlap.
  */
 void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
                              const wend_operator_source *source, const wend_faces *faces,

@@ -198,23 +198,25 @@ START_TEST(settings_are_obeyed) {
 }
 END_TEST
 
-/* The kernel sum at the target of 20: sum_j W(r_ij, H_i) pi H_i^2 = 20, from all particles. */
+/* From all particles: 22 neighbours, counted with the weight 1 - q^4 over its integral in a
+ * disc of radius 1, 2/3 of the disc; volumes with Wendland C2, whose peak is 7/pi. */
 START_TEST(supports_hold_the_target) {
   gas g = {.all = 0};
   wend_team self = gas_alone();
   ck_assert(build(&self, &plans[1], GAS_CUT, &g) == WEND_OK);
   const double(*place)[4] = (const double(*)[4])g.geometry.near.place;
   for (int32_t i = 0; i < g.all; i += 7) {
-    double sum = 0;
+    double count = 0, density = 0;
     for (int32_t j = 0; j < g.all; j++) {
       const double dx = remainder(place[j][0] - place[i][0], 2);
       const double dy = remainder(place[j][1] - place[i][1], 2);
-      const double q = hypot(dx, dy) / place[i][3];
-      if (q < 1) sum += 7 * pow(1 - q, 4) * (1 + 4 * q);
+      const double h = place[i][3], q = hypot(dx, dy) / h;
+      if (q >= 1) continue;
+      count += 1.5 * (1 - pow(q, 4));
+      density += 7 / (M_PI * h * h) * pow(1 - q, 4) * (1 + 4 * q);
     }
-    ck_assert_double_eq_tol(sum, 20, 1e-9);
-    ck_assert_double_eq_tol(g.geometry.volume[i], M_PI * place[i][3] * place[i][3] / sum,
-                            1e-12);
+    ck_assert_double_eq_tol(count, 22, 1e-9);
+    ck_assert_double_eq_tol(g.geometry.volume[i], 1 / density, 1e-12);
   }
   gas_reset(&g);
   wend_team_reset(&self);
@@ -268,17 +270,16 @@ START_TEST(supports_too_large_name_the_particle) {
 }
 END_TEST
 
-/* Half the shortest period holds at most pi/4 of the 16 in a square: fewer than 20. */
+/* A disc of half a period holds pi/4 of the 16 in a square: fewer than 22. */
 START_TEST(too_few_particles_are_an_error) {
   gas_plan plan = plans[0];
   plan.side = 4;
   gas g = {.all = 0};
   ck_assert(gas_fill(&team, &plan, GAS_CUT, &g) == WEND_OK);
   fails(&g, WEND_ERR_GEOMETRY, "particle ");
-  /* In an open box, where the support may be as wide as one likes, each counts 7 at most: the
-   * kernel's norm. */
+  /* In an open box, where supports may be as wide as one likes, each counts 1.5 at most. */
   plan.periodic = 0;
-  plan.side = 1;
+  plan.side = 3;
   ck_assert(gas_fill(&team, &plan, GAS_CUT, &g) == WEND_OK);
   fails(&g, WEND_ERR_GEOMETRY, "neighbours");
 }

@@ -137,9 +137,11 @@ static double explicit_step_of(const gas_plan *plan, const wend_settings *settin
   return step;
 }
 
+/* Without a limiter also without sharpening, which fades where fluxes jump: a linear operator.
+ */
 static wend_settings settings_of(bool limited) {
   wend_settings s = wend_settings_default();
-  s.limited = limited;
+  s.limited = s.sharpen = limited;
   s.closure = 1e-2;
   return s;
 }
@@ -197,7 +199,7 @@ static const struct {
     {&closed, true, GAS_JUMPS},   {&open_gas, true, GAS_SMOOTH}, {&open_gas, true, GAS_JUMPS},
     {&across, true, GAS_DECADES},
 };
-enum { CASES = sizeof cases / sizeof cases[0], DECADES = CASES - 1 };
+enum { CASES = sizeof cases / sizeof cases[0] };
 
 /* Euler steps of a half and a quarter of the explicit one: with the limiter, too, the error
  * goes down with them. */
@@ -235,17 +237,19 @@ static int64_t measure(int k, const wend_settings *s, double until, const answer
 }
 
 /* Each super-step adds about the tolerance at most. Accuracy asks for none shorter than the
- * shortest super-step, 2.2 explicit ones: what fixed steps of that length leave stays, and 1e-6
- * does as well, within a fifth. Where energies scatter over 12 decades that is all there is:
- * 1%. */
+ * shortest super-step, 2.2 explicit ones: what fixed steps of that length leave stays, within a
+ * fifth, and is about what Euler leaves at the explicit step. */
 START_TEST(errors_fall_with_the_tolerance) {
   wend_settings s = settings_of(cases[_i].limited);
   const double unit = explicit_step_of(cases[_i].plan, &s), until = 40 * unit;
   answer a = answer_of(cases[_i].plan, &s, cases[_i].state, until);
-  double error[3], rest;
+  double error[3], rest, euler;
   int64_t steps[3];
   s.fixed_step = s.margin * wend_supertime_find(s.supertime)->reach(3) * unit;
   measure(_i, &s, until, &a, &rest);
+  s.fixed_step = s.margin * unit;
+  measure(_i, &s, until, &a, &euler);
+  ck_assert_double_lt(rest, 1.5 * euler);
   s.fixed_step = 0;
   for (int k = 0; k < 3; k++) {
     s.tolerance = 1e-2 * pow(0.01, k);
@@ -255,9 +259,8 @@ START_TEST(errors_fall_with_the_tolerance) {
   if (team.rank == 0)
     printf("case %d: errors %.1e %.1e %.1e in %d, %d, %d super-steps; %.1e in the shortest\n",
            _i, error[0], error[1], error[2], (int)steps[0], (int)steps[1], (int)steps[2], rest);
-  if (_i != DECADES) ck_assert_double_lt(error[1], error[0] / 1.5);
+  ck_assert_double_lt(error[1], fmax(error[0] / 2, 1.2 * rest));
   ck_assert(steps[0] < steps[1] && steps[1] <= steps[2]);
-  ck_assert_double_lt(rest, _i == DECADES ? 1e-2 : 6e-4);
   free(a.energy);
 }
 END_TEST

@@ -19,7 +19,7 @@ static double chance(uint64_t id, uint64_t channel) {
 }
 
 /* Circles about a point off the middle, tilted in 3-D, their strength over a decade; no field
- * in a corner. Coefficients jump by 30. */
+ * in a corner. Coefficients scatter little here, over two decades there. */
 static void dress(const gas_plan *plan, wend_particles *p) {
   double **column = p->column;
   for (int32_t i = 0; i < p->n; i++) {
@@ -29,7 +29,8 @@ static void dress(const gas_plan *plan, wend_particles *p) {
     column[WEND_BX][i] = none ? 0 : -y * strength;
     column[WEND_BY][i] = none ? 0 : x * strength;
     column[WEND_BZ][i] = none || plan->dim == 2 ? 0 : (0.3 + x * y) * strength;
-    column[WEND_KPAR][i] = (y > 0.2 ? 0.03 : 1) * (0.5 + chance(p->id[i], 2));
+    const double u = chance(p->id[i], 2);
+    column[WEND_KPAR][i] = y > 0.2 ? 0.03 * pow(10, 2 * u - 1) : 1 + 0.1 * u;
     column[WEND_KPERP][i] = plan->across ? 0.05 * chance(p->id[i], 3) : 0;
     if (none && !plan->across && !plan->unmagnetised) column[WEND_KPAR][i] = 0;
   }
