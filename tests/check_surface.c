@@ -109,7 +109,8 @@ static found find(const wend_domain *domain, wend_particles particles) {
   for (int32_t i = 0; i < n; i++)
     for (int a = 0; a < 3; a++) place[i][a] = f.particles.column[WEND_X + a][i];
   const wend_smoothing *smoothing = wend_smoothing_find("wendland-c2");
-  ck_assert(wend_supports_find(&team, domain, smoothing, 48, &f.particles, place) == WEND_OK);
+  ck_assert(wend_supports_find(&team, domain, wend_smoothing_count(), 48, &f.particles,
+                               place) == WEND_OK);
   ck_assert(wend_neighbours_init(&team, domain, &f.particles, (const double(*)[4])place,
                                  &f.near) == WEND_OK);
   f.surface = calloc((size_t)n, 1);
