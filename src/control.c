@@ -6,6 +6,10 @@
 /* Change of length from one step to the next, and how far below the tolerance it aims. */
 static const double shrink_most = 0.3, grow_most = 2, aim = 0.8;
 
+/* A donor whose receiver has nothing pays as much heat as energy, which the explicit step does
+ * not foresee: forward-Euler steps may be cut by up to this. */
+static const double euler_halvings = 8;
+
 /* Growth after a step that the bounds had shortened: gentle, since each failure costs an
  * attempt. */
 static const double grow_after_bounds = 1.189207115002721;
@@ -77,9 +81,10 @@ wend_plan wend_control_plan(const wend_control *control, const wend_settings *se
 
 bool wend_control_shorten(wend_control *control, const wend_settings *settings,
                           const wend_supertime *family, double explicit_step, wend_plan *plan) {
+  const double euler = settings->margin * explicit_step;
   control->redone_bounds++;
-  if (plan->stages == 1) return false;
-  plan->step = fmax(plan->step / 2, settings->margin * explicit_step);
+  if (plan->step <= euler / euler_halvings) return false;
+  plan->step = plan->step > euler ? fmax(plan->step / 2, euler) : plan->step / 2;
   plan->stages = fit_stages(settings, family, explicit_step, plan->step);
   plan->cause = WEND_CAUSE_BOUNDS;
   return true;

@@ -44,7 +44,7 @@ wend_plan wend_control_plan(const wend_control *control, const wend_settings *se
                             const wend_supertime *family, double explicit_step,
                             double remaining);
 
-/** Shortens a plan that left the bounds: half as long, down to one forward-Euler step. Returns false where there
+/** Shortens a plan that left the bounds: half as long, down to an eighth of one forward-Euler step. Returns false where there
  *  is nothing shorter. The controller remembers. */
 bool wend_control_shorten(wend_control *control, const wend_settings *settings,
                           const wend_supertime *family, double explicit_step, wend_plan *plan);

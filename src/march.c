@@ -1,8 +1,9 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * march.c: super-steps with error control, bounds and books.
  *
- * Unknowns are E and, where a surface is open, the energy escaped from each particle: one block
- * each, advanced by the same stages and thrown away together when an attempt fails. */
+ * Unknowns are E, the energy escaped from each particle where a surface is open, and its heat
+ * with streaming: one block each, advanced by the same stages and thrown away together when an
+ * attempt fails. */
 #include "march.h"
 #include "local_bounds.h"
 #include "stage.h"
@@ -16,13 +17,24 @@ static const double slack = 1e-13;
 
 static int64_t block(const wend_march *m) { return m->transport->geometry->near.owned; }
 
-static double *second(const wend_march *m, double *array) {
-  return m->unknowns > 1 ? array + block(m) : NULL;
+/* Blocks of the unknowns beside E; NULL where there is none. */
+static double *escaped_block(const wend_march *m, double *array) {
+  return m->transport->escapes ? array + block(m) : NULL;
 }
 
-static wend_status compute_rate(wend_team *team, wend_march *m, const double *energy,
-                                double *rate) {
-  return wend_transport_rate(team, m->transport, energy, rate, second(m, rate));
+static double *heat_block(const wend_march *m, double *array) {
+  if (!m->transport->streams) return NULL;
+  return array + block(m) * (m->transport->escapes ? 2 : 1);
+}
+
+wend_status wend_march_rate(wend_team *team, wend_march *march, const double *energy,
+                            double *rate) {
+  wend_march *m = march;
+  const wend_status status =
+      wend_transport_rate(team, m->transport, energy, rate, escaped_block(m, rate));
+  if (m->transport->streams && block(m) > 0)
+    memcpy(heat_block(m, rate), m->transport->heat, (size_t)block(m) * sizeof *rate);
+  return status;
 }
 
 /* Runs the stages of one attempt; the increments of all unknowns end in `latest`. */
@@ -35,7 +47,7 @@ static wend_status run_stages(wend_team *team, wend_march *m, const wend_plan *p
   wend_stage_first(all, stage[1].mt * plan->step, m->rate_0, m->latest);
   for (int j = 2; j <= plan->stages; j++) {
     wend_stage_add(n, m->energy, m->latest, m->trial);
-    const wend_status status = compute_rate(team, m, m->trial, m->rate);
+    const wend_status status = wend_march_rate(team, m, m->trial, m->rate);
     if (status != WEND_OK) return status;
     wend_stage_next(all, &stage[j], plan->step, m->latest, m->rate, m->rate_0, m->older);
     double *const swap = m->latest;
@@ -65,8 +77,8 @@ static double round_off(const wend_march *m) {
   return slack * fmax(fabs(m->low), fabs(m->high));
 }
 
-/* Escape lowers the least value legally; then only e < 0 and the upper end count. Without a
- * limiter there are no bounds to keep but e >= 0. */
+/* Escape and heat lower the least value legally; then only e < 0 and the upper end count.
+ * Without a limiter there are no bounds to keep but e >= 0. */
 static bool within(const wend_march *m, double low, double high) {
   if (!m->settings.limited) return low >= 0 && isfinite(high);
   const double give = round_off(m);
@@ -101,8 +113,11 @@ static void accept(wend_team *team, wend_march *m, const wend_plan *plan, double
                    double remaining) {
   const int64_t n = block(m);
   memcpy(m->energy, m->trial, (size_t)n * sizeof *m->energy);
-  if (m->unknowns > 1)
-    wend_ledger_book(team, &m->ledger, WEND_ACCOUNT_ESCAPED, n, second(m, m->latest));
+  if (m->transport->escapes)
+    wend_ledger_book(team, &m->ledger, WEND_ACCOUNT_ESCAPED, n, escaped_block(m, m->latest));
+  if (m->transport->streams)
+    wend_ledger_book(team, &m->ledger, WEND_ACCOUNT_STREAMING_HEAT, n,
+                     heat_block(m, m->latest));
   wend_ledger_count(team, &m->ledger, n, m->energy);
   double *const swap = m->rate_0;
   m->rate_0 = m->rate;
@@ -118,7 +133,7 @@ wend_status wend_march_step(wend_team *team, wend_march *march, double until) {
   const double explicit_step = m->transport->explicit_step;
   const double remaining = until - m->time;
   if (!m->rate_known) {
-    status = compute_rate(team, m, m->energy, m->rate_0);
+    status = wend_march_rate(team, m, m->energy, m->rate_0);
     if (status != WEND_OK) return status;
     m->rate_known = true;
   }
@@ -140,7 +155,7 @@ wend_status wend_march_step(wend_team *team, wend_march *march, double until) {
           plan.step, m->time, m->low, m->high, low, high);
       return wend_agree(team);
     }
-    status = compute_rate(team, m, m->trial, m->rate);
+    status = wend_march_rate(team, m, m->trial, m->rate);
     if (status != WEND_OK) return status;
     m->last_error = error_of(team, m, plan.step);
     if (wend_control_judge(&m->control, &m->settings, m->family, explicit_step, m->last_error,
@@ -171,7 +186,7 @@ wend_status wend_march_init(wend_team *team, const wend_settings *settings,
                     .transport = transport,
                     .energy = energy,
                     .time = time,
-                    .unknowns = transport->escapes ? 2 : 1};
+                    .unknowns = 1 + transport->escapes + transport->streams};
   if (m->family == NULL)
     wend_fail(team, WEND_ERR_ARGUMENT, "no time-stepping scheme is called \"%s\"",
               settings->supertime);

@@ -22,7 +22,7 @@ typedef struct wend_march {
   wend_plan last;    /**< the last super-step made */
   double last_error; /**< its estimated error, relative */
   wend_ledger ledger;
-  int unknowns;    /**< E, and escaped energy where a surface is open */
+  int unknowns;    /**< E, escaped energy where a surface is open, heat with streaming */
   bool rate_known; /**< rate_0 belongs to the present energies */
   double *rate_0, *rate, *latest, *older, *trial; /**< [unknowns][owned] work space */
 } wend_march;
@@ -65,6 +65,10 @@ void wend_march_save(const wend_march *march, wend_march_state *state);
  * WEND_ERR_ARGUMENT. */
 wend_status wend_march_restore(wend_team *team, wend_march *march,
                                const wend_march_state *state, bool *same);
+
+/** Computes the rates of all unknowns, [unknowns][owned], from energies [owned]. Collective. */
+wend_status wend_march_rate(wend_team *team, wend_march *march, const double *energy,
+                            double *rate);
 
 /** Frees the work space. Local. */
 void wend_march_reset(wend_march *march);

@@ -79,9 +79,7 @@ wend_status wend_march_restore(wend_team *team, wend_march *march,
   WEND_TRY(wend_agree(team));
   take(m, state);
   *same = m->transport->explicit_step == state->number[EXPLICIT];
-  const int64_t n = m->transport->geometry->near.owned;
-  WEND_TRY(wend_transport_rate(team, m->transport, m->energy, m->rate_0,
-                               m->unknowns > 1 ? m->rate_0 + n : NULL));
+  WEND_TRY(wend_march_rate(team, m, m->energy, m->rate_0));
   m->rate_known = true;
 done:
   return status;

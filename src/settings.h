@@ -17,6 +17,9 @@ typedef struct wend_settings {
   bool sharpen;          /**< undo the second-order smoothing of slopes and faces */
   bool limited;          /**< flux limiter; off only in tests of the linear operator */
   bool isotropic_unmagnetised; /**< where B = 0: (kappa_par + 2 kappa_perp) / 3, else none */
+  double streaming_length;     /**< ell, absolute; 0: not so */
+  double streaming_supports;   /**< ell in supports H; 0: not so. Both 0: no streaming */
+  double alfven_ceiling;       /**< v_A at most; 0: no ceiling */
   const char *supertime;       /**< time-stepping family, by name */
   int stages;                  /**< stages a super-step at most */
   double margin;               /**< share of the stable length that is used */

@@ -23,9 +23,17 @@ static wend_status overlapped(wend_team *team, wend_transport *t, double *field,
   return status;
 }
 
+static wend_streaming_source streaming_source(const wend_transport *t) {
+  return (wend_streaming_source){.kappa = (const double(*)[2])t->kappa,
+                                 .speed = (const double(*)[2])t->speed};
+}
+
 static void flux(wend_transport *t, wend_slices slices) {
   const wend_pairs *pairs = &t->geometry->near.pairs;
-  if (t->along)
+  const wend_streaming_source source = streaming_source(t);
+  if (t->streams)
+    wend_streaming_flux(pairs, slices, t->slope, &source, (double(*)[2])t->state);
+  else if (t->along)
     wend_exchange_flux_along(pairs, slices, t->slope, t->kappa_along, (double(*)[2])t->state);
   else
     wend_exchange_flux_full(pairs, slices, t->gradient, (const double(*)[3])t->field,
@@ -47,7 +55,11 @@ static wend_status sharpen_fluxes(wend_team *team, wend_transport *t) {
 
 static void ratios(wend_transport *t, wend_slices slices) {
   const wend_pairs *pairs = &t->geometry->near.pairs;
-  if (t->along)
+  const wend_streaming_source source = streaming_source(t);
+  if (t->streams)
+    wend_streaming_ratios(pairs, slices, t->alpha, t->beta, &source, &t->stream, t->sum_full,
+                          (const double(*)[2])t->state, t->kept, t->antidiffusive, t->ratio);
+  else if (t->along)
     wend_exchange_ratios_along(pairs, slices, t->alpha, t->beta, t->kept, t->sum_full,
                                (const double(*)[2])t->state, t->antidiffusive, t->ratio);
   else
@@ -60,6 +72,19 @@ static void ratios(wend_transport *t, wend_slices slices) {
 static void exchange(const wend_transport *t, wend_slices slices, double *rate) {
   wend_exchange_rate(&t->geometry->near.pairs, slices, t->kept, t->state, t->width,
                      t->antidiffusive, (const double(*)[2])t->ratio, rate);
+}
+
+/* Heat is summed over pairs, which may be negative at a particle, then clipped there. */
+static void heat_gas(wend_transport *t, double *rate) {
+  const wend_neighbours *near = &t->geometry->near;
+  for (int32_t i = 0; i < near->local; i++) t->root[i] = sqrt(sqrt(t->state[2 * (int64_t)i]));
+  wend_streaming_heat(&near->pairs, near->all, t->kept, t->stream.fraction,
+                      (const double(*)[2])t->state, t->root, t->antidiffusive,
+                      (const double(*)[2])t->ratio, t->heat);
+  for (int32_t i = 0; i < near->owned; i++) {
+    t->heat[i] = fmax(0, t->heat[i]);
+    rate[i] -= t->heat[i];
+  }
 }
 
 static void let_escape(const wend_transport *t, double *rate, double *escaped) {
@@ -86,6 +111,7 @@ wend_status wend_transport_rate(wend_team *team, wend_transport *transport,
   exchange(t, t->geometry->near.interior, rate);
   status = wend_halo_end(team, halo);
   exchange(t, t->geometry->near.border, rate);
+  if (t->streams) heat_gas(t, rate);
   if (t->escapes) let_escape(t, rate, escaped);
   return status;
 }
@@ -113,6 +139,13 @@ void wend_transport_reset(wend_transport *transport) {
   free(t->sharp);
   free(t->sum_full);
   free(t->escape);
+  free(t->speed);
+  free(t->stream.pull);
+  free(t->stream.share);
+  free(t->stream.reach);
+  free(t->stream.fraction);
+  free(t->root);
+  free(t->heat);
   free(t->state);
   free(t->antidiffusive);
   free(t->ratio);

@@ -5,11 +5,13 @@
 #define WEND_SRC_TRANSPORT_H
 
 #include "geometry.h"
+#include "streaming.h"
 
 typedef struct wend_transport {
   wend_geometry *geometry;
   bool along; /**< kappa_perp = 0 everywhere: one scalar flux a particle */
   bool limited;
+  bool streams;        /**< Alfvenic streaming beside diffusion */
   bool escapes;        /**< some surface is open */
   int width;           /**< values a particle in `state`: 2 along the field, 4 in full */
   double (*field)[3];  /**< [local] unit field, 0 where B = 0 */
@@ -22,10 +24,15 @@ typedef struct wend_transport {
   double *sharp;    /**< [owned][width - 1] sharpened fluxes; NULL likewise */
   double *sum_full; /**< [owned] sum_j a_ij */
   double
-      *escape;   /**< [owned] energy that leaves through a free surface: rate x e; NULL: none */
-  double *state; /**< [local][width] e and flux */
-  double *antidiffusive; /**< [entries] t_ij */
-  double (*ratio)[2];    /**< [local] R+, R- */
+      *escape; /**< [owned] energy that leaves through a free surface: rate x e; NULL: none */
+  double (*speed)[2];          /**< [local] v_A and ell; NULL: no streaming */
+  wend_streaming_pairs stream; /**< [entries] streaming columns */
+  double *root;                /**< [local] e^(1/4), for the heat */
+  double *heat;                /**< [owned] streaming heat a time, after each rate */
+  int64_t ceilings;            /**< particles whose v_A was cut to the ceiling; all ranks */
+  double *state;               /**< [local][width] e and flux */
+  double *antidiffusive;       /**< [entries] t_ij */
+  double (*ratio)[2];          /**< [local] R+, R- */
   double
       explicit_step; /**< forward-Euler limit min V / sum (a + s + escape) over all particles */
   int64_t applications; /**< times the right-hand side was computed */
@@ -34,7 +41,8 @@ typedef struct wend_transport {
 /** Builds the operator from B, kappa_par and kappa_perp of the particles. Collective.
  *
  *  Pair columns and matrices that only this needs are freed from the geometry, which must
- * outlive the transport. Absent columns count as zero. A NaN or negative coefficient is an
+ * outlive the transport. Absent columns count as zero; with streaming the density must be
+ * there, and an absent ionised fraction counts as one. A NaN or negative coefficient is an
  * error that names the particle. */
 wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
                                 const wend_particles *particles, wend_geometry *geometry,

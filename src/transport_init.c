@@ -40,6 +40,77 @@ static void magnetise(wend_team *team, const wend_settings *settings, const wend
   }
 }
 
+static bool wants_streaming(const wend_settings *settings) {
+  return settings->streaming_length > 0 || settings->streaming_supports > 0;
+}
+
+/* v_A = |B| / sqrt(4 pi rho_ion), Gaussian, up to the ceiling; and the regularisation length.
+ */
+static void set_speeds(wend_team *team, const wend_settings *settings, const wend_particles *p,
+                       wend_transport *t) {
+  const double ceiling = settings->alfven_ceiling > 0 ? settings->alfven_ceiling : INFINITY;
+  if (p->column[WEND_DENSITY] == NULL)
+    wend_fail(team, WEND_ERR_PARTICLES, "streaming needs the mass density of the particles");
+  for (int32_t i = 0; team->status == WEND_OK && i < p->n; i++) {
+    const double b =
+        hypot(hypot(value_of(p, WEND_BX, i), value_of(p, WEND_BY, i)), value_of(p, WEND_BZ, i));
+    const double ionised = p->column[WEND_IONISED] != NULL ? p->column[WEND_IONISED][i] : 1;
+    const double rho = ionised * p->column[WEND_DENSITY][i];
+    const double speed = b > 0 ? b / sqrt(4 * M_PI * rho) : 0;
+    if (!(rho >= 0) || isnan(speed) || (isinf(speed) && isinf(ceiling)))
+      wend_fail(team, WEND_ERR_PARTICLES,
+                "particle %" PRIu64
+                ": ion density %g and field %g give no Alfven speed: set a ceiling "
+                "(streaming: alfven_ceiling) or mend the particle",
+                p->id[i], rho, b);
+    t->ceilings += speed > ceiling;
+    t->speed[i][0] = fmin(speed, ceiling);
+    t->speed[i][1] = settings->streaming_length > 0
+                         ? settings->streaming_length
+                         : settings->streaming_supports * t->geometry->near.place[i][3];
+  }
+}
+
+static wend_status prepare_streaming(wend_team *team, const wend_settings *settings,
+                                     const wend_particles *p, wend_transport *t) {
+  wend_status status = WEND_OK;
+  t->streams = wants_streaming(settings);
+  if (!t->streams) return WEND_OK;
+  if (!t->along)
+    wend_fail(
+        team, WEND_ERR_SETUP,
+        "streaming beside perpendicular diffusion is not there yet: set the perpendicular "
+        "diffusivity to 0, and diffusion.unmagnetised to none where B = 0");
+  t->speed = wend_allocate(team, t->geometry->near.local, sizeof *t->speed);
+  WEND_TRY(wend_agree(team));
+  set_speeds(team, settings, p, t);
+  wend_halo_exchange(team, &t->geometry->near.halo, t->speed, 2, 2, sizeof(double));
+  WEND_TRY(wend_agree(team));
+  wend_team_count(team, 1, &t->ceilings);
+done:
+  return status;
+}
+
+static wend_status build_streaming(wend_team *team, const wend_operator_source *source,
+                                   wend_transport *t, double *sum_both) {
+  const wend_geometry *g = t->geometry;
+  const int64_t entries = wend_neighbours_entries(&g->near);
+  float **const column[] = {&t->stream.pull, &t->stream.share, &t->stream.reach,
+                            &t->stream.fraction};
+  for (size_t k = 0; k < sizeof column / sizeof *column; k++)
+    *column[k] = wend_allocate(team, entries, sizeof(float));
+  t->root = wend_allocate(team, g->near.local, sizeof *t->root);
+  t->heat = wend_allocate(team, g->near.owned, sizeof *t->heat);
+  const wend_status status = wend_agree(team);
+  if (status != WEND_OK) return status;
+  const wend_streaming_source streaming = {.kappa = source->kappa,
+                                           .speed = (const double(*)[2])t->speed};
+  wend_streaming_columns(&g->near.pairs, g->near.all, source, &g->faces, &t->stream);
+  wend_streaming_bounds(&g->near.pairs, g->near.all, &source->face, &streaming, &t->stream,
+                        t->sum_full, sum_both);
+  return WEND_OK;
+}
+
 static wend_status exchange_coefficients(wend_team *team, wend_transport *t) {
   wend_halo *halo = &t->geometry->near.halo;
   wend_halo_exchange(team, halo, t->field, 3, 3, sizeof(double));
@@ -150,6 +221,7 @@ wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
   magnetise(team, settings, particles, t);
   WEND_TRY(wend_agree(team));
   WEND_TRY(exchange_coefficients(team, t));
+  WEND_TRY(prepare_streaming(team, settings, particles, t));
   const wend_operator_source source = {.face = wend_geometry_source(geometry),
                                        .field = (const double(*)[3])t->field,
                                        .kappa = (const double(*)[2])t->kappa,
@@ -157,8 +229,11 @@ wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
                                        .angle_share = settings->angle_share};
   WEND_TRY(allocate(team, t));
   for (int32_t i = 0; i < near->owned; i++) t->kappa_along[i] = t->kappa[i][0];
-  wend_operator_low_order(&near->pairs, near->all, &source, &geometry->faces, t->kept,
-                          t->sum_full, sum_both);
+  if (t->streams)
+    WEND_TRY(build_streaming(team, &source, t, sum_both));
+  else
+    wend_operator_low_order(&near->pairs, near->all, &source, &geometry->faces, t->kept,
+                            t->sum_full, sum_both);
   if (t->escapes)
     wend_operator_escape(&near->pairs, near->all, &source, &geometry->faces, geometry->surface,
                          t->escape);

@@ -10,6 +10,7 @@ static const wend_scene table[] = {
     {"ring", "a patch diffusing along circular field lines", wend_ring_prove},
     {"blob", "a Gaussian spreading along an oblique field", wend_blob_prove},
     {"wave", "a mode decaying along the field, and one across it", wend_wave_prove},
+    {"triangle", "streaming down a triangle, whose top becomes a plateau", wend_triangle_prove},
     {"ball", "a ball of gas losing energy through its surface", wend_ball_prove},
 };
 

@@ -51,6 +51,7 @@ wend_status wend_verdict_close(wend_team *team, const wend_verdict *verdict, con
 wend_status wend_ring_prove(wend_team *team, const wend_scene_options *options);
 wend_status wend_blob_prove(wend_team *team, const wend_scene_options *options);
 wend_status wend_wave_prove(wend_team *team, const wend_scene_options *options);
+wend_status wend_triangle_prove(wend_team *team, const wend_scene_options *options);
 wend_status wend_ball_prove(wend_team *team, const wend_scene_options *options);
 
 #endif
