@@ -140,6 +140,7 @@ SETUPS = [
     (changed(diffusion=POWER), ["diffusion.parallel", "massDensity", "good.h5"]),
     (changed(stepping="{stages: 4}"), ["line 6", "stepping.stages", "even"]),
     (changed(geometry="{neighbours: 900}"), ["particle", "neighbours"]),
+    (changed(particles="out/x_000001.h5"), ["output.name", "replace the particle file out/x_000001.h5"]),
     (changed(iteration=7), ["good.h5", "iteration", "7"]),
     (changed(particles="nowhere.h5"), ["nowhere.h5", "No such file"]),
     ("particles: [unfinished\n", ["line"]),

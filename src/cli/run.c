@@ -16,13 +16,29 @@ static const double pause = 3;
 /* One call of the command. */
 typedef struct session {
   const char *setup;
-  bool resume, explain, quiet;
+  bool resume, explain, quiet, help;
   wend_team *team;
   wend_run run;
   wend_ledger_file ledger;
   double said, marching; /* when progress was last shown; seconds spent in super-steps */
   int64_t stages;        /* stages made before this session */
 } session;
+
+static void print_help(void) {
+  printf(
+      "usage: wend run SETUP.yaml [OPTION...]\n\n"
+      "Reads a setup and its particle file, transports the cosmic rays to the end time, and "
+      "writes to\noutput.folder, with NAME for output.name:\n"
+      "  NAME_000000.h5 ...  particles (openPMD), the first at the start; .xmf for ParaView\n"
+      "  NAME_ledger.tsv     where the energy went, a row a super-step, in erg\n"
+      "  NAME_report.txt     the closing table: books, costs, resolution\n"
+      "  NAME_run.log        versions, machine and setup, for citing and repeating\n"
+      "  NAME_checkpoint.h5  what --resume goes on from\n\noptions:\n"
+      "  --resume   go on from the checkpoint, on any number of ranks, with the same bits\n"
+      "  --quiet    print the closing table only\n"
+      "  --explain  print every key of a setup: its default and its meaning\n\n"
+      "example:\n  mpirun -n 4 wend run galaxy.yaml\n");
+}
 
 static bool understand(int argc, char **argv, session *s) {
   for (int k = 1; k < argc; k++) {
@@ -32,12 +48,14 @@ static bool understand(int argc, char **argv, session *s) {
       s->explain = true;
     else if (strcmp(argv[k], "--quiet") == 0)
       s->quiet = true;
+    else if (strcmp(argv[k], "--help") == 0)
+      s->help = true;
     else if (argv[k][0] == '-' || s->setup != NULL)
       return false;
     else
       s->setup = argv[k];
   }
-  return s->setup != NULL || s->explain;
+  return s->setup != NULL || s->explain || s->help;
 }
 
 /* A line for people, unless they asked for quiet. */
@@ -152,9 +170,11 @@ int wend_run_command(wend_team *team, int argc, char **argv) {
   session s = {.team = team};
   if (!understand(argc, argv, &s))
     return wend_command_usage(
-        team, "call it as: wend run SETUP.yaml [--resume] [--quiet], or wend run --explain");
-  if (s.explain) {
-    if (team->rank == 0) wend_setup_explain(stdout);
+        team,
+        "call it as: wend run SETUP.yaml [--resume] [--quiet]; wend run --help says more");
+  if (s.help || s.explain) {
+    if (team->rank == 0 && s.help) print_help();
+    if (team->rank == 0 && !s.help) wend_setup_explain(stdout);
     return WEND_OK;
   }
   const wend_status status = carry_out(&s);

@@ -47,7 +47,7 @@ wend_status wend_run_read_particles(wend_team *team, wend_run *run);
 wend_status wend_run_build(wend_team *team, wend_run *run);
 
 /** Makes the folder of the outputs, with those above it, and checks that files can be made
- * there. Collective. */
+ * there and that the particle file is none of those that the outputs replace. Collective. */
 wend_status wend_run_make_folder(wend_team *team, const wend_run *run);
 /** Writes the next output file and moves the cursor past the present time. Collective. */
 wend_status wend_run_write_output(wend_team *team, wend_run *run);

@@ -54,6 +54,37 @@ static void make_folders(wend_team *team, const wend_run *run) {
   }
 }
 
+/* Number in NAME_<digits>.h5, .xmf or either with .part; -1 for any other file. */
+static int64_t number_of(const char *file, const char *name) {
+  static const char *const tail[] = {".h5", ".xmf", ".h5.part", ".xmf.part"};
+  const size_t length = strlen(name);
+  if (strncmp(file, name, length) != 0 || file[length] != '_' ||
+      !isdigit((unsigned char)file[length + 1]))
+    return -1;
+  char *end;
+  const long long number = strtoll(file + length + 1, &end, 10);
+  for (size_t k = 0; k < sizeof tail / sizeof tail[0]; k++)
+    if (strcmp(end, tail[k]) == 0 && end - file >= (ptrdiff_t)length + 7) return number;
+  return -1;
+}
+
+/* A run that starts from an output of that name would replace its own input. */
+static void spare_input(wend_team *team, const wend_run *run) {
+  struct stat input, facts;
+  DIR *list = stat(run->setup.particles, &input) == 0 ? opendir(run->setup.folder) : NULL;
+  for (struct dirent *entry; list != NULL && (entry = readdir(list)) != NULL;) {
+    char path[PATH_MOST];
+    if (number_of(entry->d_name, run->setup.name) < 0) continue;
+    snprintf(path, sizeof path, "%s/%s", run->setup.folder, entry->d_name);
+    if (stat(path, &facts) == 0 && facts.st_dev == input.st_dev && facts.st_ino == input.st_ino)
+      wend_fail(team, WEND_ERR_SETUP,
+                "%s: output.name: the outputs would replace the particle file %s: choose "
+                "another name or folder",
+                run->setup.path, run->setup.particles);
+  }
+  if (list != NULL) closedir(list);
+}
+
 static void try_folder(wend_team *team, const wend_run *run) {
   char path[PATH_MOST];
   if (wend_run_path(team, run, sizeof path, path, "_try_%ld.part", (long)getpid()) != WEND_OK)
@@ -70,6 +101,7 @@ static void try_folder(wend_team *team, const wend_run *run) {
 wend_status wend_run_make_folder(wend_team *team, const wend_run *run) {
   if (team->rank == 0) {
     make_folders(team, run);
+    if (team->status == WEND_OK) spare_input(team, run);
     if (team->status == WEND_OK) try_folder(team, run);
   }
   return wend_agree(team);
@@ -91,20 +123,6 @@ wend_status wend_run_write_output(wend_team *team, wend_run *run) {
   wend_output_pass(&run->setup, run->start, run->march.time, &run->outputs);
 done:
   return status;
-}
-
-/* Number in NAME_<digits>.h5, .xmf or either with .part; -1 for any other file. */
-static int64_t number_of(const char *file, const char *name) {
-  static const char *const tail[] = {".h5", ".xmf", ".h5.part", ".xmf.part"};
-  const size_t length = strlen(name);
-  if (strncmp(file, name, length) != 0 || file[length] != '_' ||
-      !isdigit((unsigned char)file[length + 1]))
-    return -1;
-  char *end;
-  const long long number = strtoll(file + length + 1, &end, 10);
-  for (size_t k = 0; k < sizeof tail / sizeof tail[0]; k++)
-    if (strcmp(end, tail[k]) == 0 && end - file >= (ptrdiff_t)length + 7) return number;
-  return -1;
 }
 
 static int64_t drop(wend_team *team, const wend_run *run, int64_t from) {

@@ -134,8 +134,10 @@ static void scatter(wend_team *team, const globals *g, wend_run *run) {
     good = good && g->count[1 + a] >= 0 && g->count[1 + a] < WEND_BOUNDARIES;
     boundary[a] = (wend_boundary)g->count[1 + a];
   }
+  for (int k = 4; k < 7; k++) good = good && g->count[k] >= 0;
+  good = good && g->count[8] >= 0 && g->count[8] <= WEND_VOLUME_KERNEL;
   if (!good) {
-    wend_fail(team, WEND_ERR_FILE, "the checkpoint describes no box");
+    wend_fail(team, WEND_ERR_FILE, "the checkpoint holds nonsense");
     return;
   }
   run->domain = wend_box_make((int)dim, g->box, g->box + 3, boundary, g->box[6]);
