@@ -1,7 +1,8 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * exchange.c: the limited pairwise exchange of energy, in three passes over the pairs.
  *
- * All passes run over slices: eight rows side by side, each lane summing its own row in list order. */
+ * All passes run over slices: eight rows side by side, each lane summing its own row in list
+ * order. */
 #include "exchange.h"
 #include <math.h>
 
@@ -84,8 +85,8 @@ static void ratios(const wend_pairs *p, int32_t slice, const balance *b, const d
 void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
                                 const float *restrict alpha, const float *restrict beta,
                                 const float *restrict kept, const double *restrict sum_full,
-                                const double (*restrict state)[2], double *restrict antidiffusive,
-                                double (*restrict ratio)[2]) {
+                                const double (*restrict state)[2],
+                                double *restrict antidiffusive, double (*restrict ratio)[2]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     lanes own, q;
@@ -114,7 +115,8 @@ void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
 
 void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,
                                float *const area[3], const float *restrict kept,
-                               const double *restrict sum_full, const double (*restrict state)[4],
+                               const double *restrict sum_full,
+                               const double (*restrict state)[4],
                                double *restrict antidiffusive, double (*restrict ratio)[2]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
@@ -141,7 +143,8 @@ void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,
   }
 }
 
-/* Both candidates are formed and one is chosen: a branch on the sign costs several times more. */
+/* Both candidates are formed and one is chosen: a branch on the sign costs several times more.
+ */
 static inline double correction(double t, const double *own, const double *other) {
   const double in = least(own[0], other[1]), out = least(own[1], other[0]);
   return t > 0 ? in : out;

@@ -101,9 +101,10 @@ static inline void changed_areas(const wend_pairs *p, const wend_faces *f, int64
     for (int d = 0; d < 4; d++) other[d][lane] = unknown[p->index[k + lane]][d];
   for (int d = 0; d < 3; d++)
     for (int lane = 0; lane < WEND_LANES; lane++)
-      a[d][lane] = f->area[d][k + lane] +
-                   f->weight[k + lane] * ((own[d][lane] - other[d][lane]) +
-                                          (own[3][lane] + other[3][lane]) * f->arm[d][k + lane]);
+      a[d][lane] =
+          f->area[d][k + lane] +
+          f->weight[k + lane] * ((own[d][lane] - other[d][lane]) +
+                                 (own[3][lane] + other[3][lane]) * f->arm[d][k + lane]);
 }
 
 void wend_faces_residual(const wend_pairs *pairs, wend_slices slices, int dim,
@@ -138,8 +139,8 @@ void wend_faces_extent(const wend_pairs *pairs, wend_slices slices, const wend_f
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k += WEND_LANES) {
       changed_areas(pairs, faces, k, unknown, own, a);
       for (int lane = 0; lane < WEND_LANES; lane++)
-        sum[lane] += sqrt(a[0][lane] * a[0][lane] + a[1][lane] * a[1][lane] +
-                          a[2][lane] * a[2][lane]);
+        sum[lane] +=
+            sqrt(a[0][lane] * a[0][lane] + a[1][lane] * a[1][lane] + a[2][lane] * a[2][lane]);
     }
     for (int lane = 0; lane < wend_pairs_lanes(pairs, slice); lane++)
       extent[slice * WEND_LANES + lane] = sum[lane];
@@ -178,7 +179,8 @@ void wend_chebyshev_next(wend_chebyshev *chebyshev) {
 }
 
 void wend_faces_update(int32_t n, const wend_chebyshev *chebyshev, const double scale[2],
-                       const double (*restrict diagonal)[2], const double (*restrict residual)[4],
+                       const double (*restrict diagonal)[2],
+                       const double (*restrict residual)[4],
                        const unsigned char *restrict surface, double (*restrict direction)[4],
                        double (*restrict unknown)[4]) {
   for (int32_t i = 0; i < n; i++) {

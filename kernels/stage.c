@@ -8,9 +8,9 @@ void wend_stage_first(int64_t n, double step, const double *restrict rate,
   for (int64_t i = 0; i < n; i++) increment[i] = step * rate[i];
 }
 
-void wend_stage_next(int64_t n, const wend_stage *stage, double dt, const double *restrict latest,
-                     const double *restrict rate, const double *restrict rate_0,
-                     double *restrict older) {
+void wend_stage_next(int64_t n, const wend_stage *stage, double dt,
+                     const double *restrict latest, const double *restrict rate,
+                     const double *restrict rate_0, double *restrict older) {
   for (int64_t i = 0; i < n; i++)
     older[i] = stage->mu * latest[i] + stage->nu * older[i] +
                dt * (stage->mt * rate[i] + stage->ga * rate_0[i]);

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * close_faces.c: Chebyshev sweeps over all ranks. No floating-point sum crosses ranks: the closure that
- * decides when to stop is an exact sum, the same on any number of them. */
+ * close_faces.c: Chebyshev sweeps over all ranks. No floating-point sum crosses ranks: the
+ * closure that decides when to stop is an exact sum, the same on any number of them. */
 #include "close_faces.h"
 #include "total.h"
 #include <math.h>
@@ -9,7 +9,8 @@
 /* Bounds of the Jacobi-scaled spectrum: above, by counting; below, where sweeps stop to pay. */
 static const double highest = 4, lowest = 0.1;
 
-/* Sweeps are judged in batches: a look at the closure costs one reduction and a pass over the pairs. */
+/* Sweeps are judged in batches: a look at the closure costs one reduction and a pass over the
+ * pairs. */
 enum { BATCH = 4 };
 
 typedef struct work {
@@ -51,7 +52,8 @@ enum { MISS, EXTENT, SPAN, SPAN2, COUNT, SUMS };
 /* Particles whose terms are gathered before they are summed: an exact sum likes company. */
 enum { BLOCK = 256 };
 
-/* Terms of both conditions of the particles from *i on that carry them: those off free surfaces. */
+/* Terms of both conditions of the particles from *i on that carry them: those off free
+ * surfaces. */
 static int gather_terms(const wend_geometry *g, const work *w, int32_t *i,
                         double term[SUMS][BLOCK]) {
   int n = 0;
@@ -85,13 +87,13 @@ static judgement judge(wend_team *team, const wend_geometry *g, work *w) {
                      sqrt(all[SPAN2] / all[COUNT])};
 }
 
-/* One sweep: update the owned unknowns, send them out, and see to the inside while they travel. */
+/* One sweep: update the owned unknowns, send them out, and see to the inside while they travel.
+ */
 static wend_status sweep(wend_team *team, wend_geometry *g, const wend_chebyshev *chebyshev,
                          const double scale[2], work *w) {
   wend_faces_update(g->near.owned, chebyshev, scale, (const double(*)[2])w->diagonal,
                     (const double(*)[4])w->residual, g->surface, w->direction, w->unknown);
-  wend_status status =
-      wend_halo_begin(team, &g->near.halo, w->unknown, 4, 4, sizeof(double));
+  wend_status status = wend_halo_begin(team, &g->near.halo, w->unknown, 4, 4, sizeof(double));
   if (status != WEND_OK) return status;
   residual(g, g->near.interior, w);
   status = wend_halo_end(team, &g->near.halo);

@@ -15,7 +15,8 @@
 static double default_neighbours(int dim) { return dim == 2 ? 22 : 48; }
 
 static wend_status find_supports(wend_team *team, const wend_settings *settings,
-                                 const wend_particles *p, wend_geometry *g, double (*place)[4]) {
+                                 const wend_particles *p, wend_geometry *g,
+                                 double (*place)[4]) {
   for (int32_t i = 0; i < p->n; i++)
     for (int c = 0; c < 3; c++) place[i][c] = p->column[WEND_X + c][i];
   if (p->column[WEND_SUPPORT] != NULL) {

@@ -1,9 +1,9 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * ledger.h: the books: one account for each way CR energy enters, moves or leaves.
  *
- * Accounts are exact sums, so they do not depend on ranks or order. Energy that entered is positive in
- * `injected`, `held`, `host`, `clipped`; energy that left is positive in the accounts of losses. The closure
- * error, initial + entered - left - now, must be round-off. */
+ * Accounts are exact sums, so they do not depend on ranks or order. Energy that entered is
+ * positive in `injected`, `held`, `host`, `clipped`; energy that left is positive in the
+ * accounts of losses. The closure error, initial + entered - left - now, must be round-off. */
 #ifndef WEND_SRC_LEDGER_H
 #define WEND_SRC_LEDGER_H
 
@@ -24,7 +24,7 @@ typedef enum wend_account {
   WEND_ACCOUNT_ESCAPED,
   WEND_ACCOUNT_HOST,
   WEND_ACCOUNT_CLIPPED,
-  WEND_ACCOUNTS,           /**< `now` is not an account: it is counted, not booked */
+  WEND_ACCOUNTS, /**< `now` is not an account: it is counted, not booked */
 } wend_account;
 
 /** A row of the table of accounts. */
@@ -43,7 +43,8 @@ typedef struct wend_ledger {
 
 /** Opens the books on n energies of this rank. Collective. */
 void wend_ledger_open(wend_team *team, wend_ledger *ledger, int64_t n, const double *energy);
-/** Books n terms of this rank in an account, exactly; the sum over ranks is taken. Collective. */
+/** Books n terms of this rank in an account, exactly; the sum over ranks is taken. Collective.
+ */
 void wend_ledger_book(wend_team *team, wend_ledger *ledger, wend_account account, int64_t n,
                       const double *term);
 /** Counts the energy there is now. Collective. */

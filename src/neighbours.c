@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * neighbours.c: pair lists, trimmed halos, and which slices can work while a halo is in flight. */
+ * neighbours.c: pair lists, trimmed halos, and which slices can work while a halo is in flight.
+ */
 #include "neighbours.h"
 #include "vicinity.h"
 #include <stdlib.h>

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * neighbours.h: the pair lists of a rank's particles, with exactly the ghosts that they need. */
+ * neighbours.h: the pair lists of a rank's particles, with exactly the ghosts that they need.
+ */
 #ifndef WEND_SRC_NEIGHBOURS_H
 #define WEND_SRC_NEIGHBOURS_H
 

@@ -1,9 +1,9 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
  * supports.c: support radii by growing trial radii until each holds the target number.
  *
- * A trial that is too small is widened and its neighbours are fetched anew; since trials sit on fixed levels
- * and the root is sought from there, the result does not depend on the first guess, and so not on the
- * ranks, which guess from their own particles only. */
+ * A trial that is too small is widened and its neighbours are fetched anew; since trials sit on
+ * fixed levels and the root is sought from there, the result does not depend on the first
+ * guess, and so not on the ranks, which guess from their own particles only. */
 #include "supports.h"
 #include "support.h"
 #include "vicinity.h"
@@ -14,8 +14,8 @@
 /* Widening of a trial that was too small: two levels. */
 static const double widen = 1.4142135623730951;
 
-/* Radius of a ball that holds `target` particles where the eight of a leaf fill its box: boxes of
- * eight scattered points span about 0.6 of the volume that is theirs, an axis each. */
+/* Radius of a ball that holds `target` particles where the eight of a leaf fill its box: boxes
+ * of eight scattered points span about 0.6 of the volume that is theirs, an axis each. */
 static double guess(const double *lo, const double *hi, int dim, double target) {
   double side = 0;
   for (int a = 0; a < dim; a++) side = fmax(side, hi[a] - lo[a]);
@@ -35,7 +35,8 @@ static double widest(const wend_domain *domain) {
 }
 
 /* Radius that holds `target` particles where all of them fill the box evenly. */
-static double even_radius(wend_team *team, const wend_domain *domain, double target, int32_t n) {
+static double even_radius(wend_team *team, const wend_domain *domain, double target,
+                          int32_t n) {
   int64_t all = n;
   wend_team_count(team, 1, &all);
   double box = 1;
@@ -44,8 +45,9 @@ static double even_radius(wend_team *team, const wend_domain *domain, double tar
   return pow(target * box / ((double)all * ball), 1.0 / domain->dim);
 }
 
-/* Trials from the leaf that holds each particle. A leaf that is not full tells nothing, and coincident
- * particles tell too little: the even radius stands in, and bounds the guess from below. */
+/* Trials from the leaf that holds each particle. A leaf that is not full tells nothing, and
+ * coincident particles tell too little: the even radius stands in, and bounds the guess from
+ * below. */
 static wend_status first_trials(wend_team *team, const wend_domain *domain, double target,
                                 int32_t n, double (*place)[4]) {
   const double even = even_radius(team, domain, target, n);
@@ -102,7 +104,8 @@ static void widen_trials(wend_team *team, const wend_domain *domain, double targ
     double *h = &place[todo[k]][3];
     if (*h >= most)
       wend_fail(team, WEND_ERR_GEOMETRY,
-                "particle %" PRIu64 ": no support radius up to %.4g reaches %g neighbours: ask for "
+                "particle %" PRIu64
+                ": no support radius up to %.4g reaches %g neighbours: ask for "
                 "fewer (geometry: neighbours), give supports, or enlarge the box",
                 particles->id[todo[k]], *h, target);
     *h = wend_support_level(fmin(*h * widen, most));

@@ -42,8 +42,8 @@ static wend_status grow_tree(wend_team *team, wend_vicinity *v) {
 }
 
 wend_status wend_vicinity_init(wend_team *team, const wend_domain *domain, int32_t owned,
-                               const double (*place)[4], const uint64_t *key, const uint64_t *id,
-                               wend_vicinity *vicinity) {
+                               const double (*place)[4], const uint64_t *key,
+                               const uint64_t *id, wend_vicinity *vicinity) {
   memset(vicinity, 0, sizeof *vicinity);
   wend_status status = wend_halo_build(team, domain, owned, place, &vicinity->halo);
   if (status != WEND_OK) return status;

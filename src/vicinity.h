@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: LGPL-3.0-or-later
- * vicinity.h: a rank's own particles and their ghosts, merged in canonical order, ready to be searched. */
+ * vicinity.h: a rank's own particles and their ghosts, merged in canonical order, ready to be
+ * searched. */
 #ifndef WEND_SRC_VICINITY_H
 #define WEND_SRC_VICINITY_H
 
@@ -19,11 +20,11 @@ typedef struct wend_vicinity {
 
 /** Finds the ghosts of the owned particles and merges them in. Collective.
  *
- *  place [owned][4] holds x, y, z and the radius within which neighbours are wanted; key and id [owned] in
- *  canonical order. The domain must outlive the vicinity. */
+ *  place [owned][4] holds x, y, z and the radius within which neighbours are wanted; key and id
+ * [owned] in canonical order. The domain must outlive the vicinity. */
 wend_status wend_vicinity_init(wend_team *team, const wend_domain *domain, int32_t owned,
-                               const double (*place)[4], const uint64_t *key, const uint64_t *id,
-                               wend_vicinity *vicinity);
+                               const double (*place)[4], const uint64_t *key,
+                               const uint64_t *id, wend_vicinity *vicinity);
 /** Frees all of it. Local. */
 void wend_vicinity_reset(wend_vicinity *vicinity);
 
