@@ -116,6 +116,18 @@ static const wend_key keys[] = {
      .meaning = "where B = 0: diffusivity (parallel + 2 perpendicular) / 3 in all directions, "
                 "or none"},
 
+    {"streaming.length", SIZE(WEND_Q_LENGTH), .fallback = "(no streaming)",
+     AT(settings.streaming_length),
+     .meaning =
+         "regularisation length of Alfvenic streaming: full streaming where |e/g| is below"},
+    {"streaming.supports", NUMBER(0, 1e6), .fallback = "(no streaming)",
+     AT(settings.streaming_supports),
+     .meaning =
+         "the same in support radii of each particle; one of the two turns streaming on"},
+    {"streaming.alfven_ceiling", SIZE(WEND_Q_SPEED), .fallback = "(none)",
+     AT(settings.alfven_ceiling),
+     .meaning = "Alfven speed at most; how often it is used is counted"},
+
     {"geometry.smoothing", NAME, AT(settings.smoothing), .names = smoothing_name,
      .meaning = "smoothing kernel"},
     {"geometry.neighbours", NUMBER(6, 1000), .fallback = "(22 in 2-D, 48 in 3-D)",
