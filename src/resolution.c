@@ -15,7 +15,7 @@
 #include <stdlib.h>
 
 /* 5e-4 (6.4 spacings / H)^2, H^2 = 20/pi spacings^2. */
-const double wend_resolution_smearing = 5e-4 * 6.4 * 6.4 * M_PI / 20;
+const double wend_resolution_smearing = 2.3e-4 * 6.4 * 6.4 * M_PI / 22;
 
 typedef struct work {
   double *density;       /* [local] e */
