@@ -5,7 +5,7 @@
 set -u
 name=${1%.ranks}
 ranks=${name##*-}
-limit=${WEND_TEST_SECONDS:-300}
+limit=${WEND_TEST_SECONDS:-600}
 timeout -k 10 "$limit" mpirun -n "$ranks" "${name%-*}" </dev/null
 status=$?
 echo "took $SECONDS s"
