@@ -4,9 +4,9 @@ import numpy as np
 
 import run_tool as rt
 
-# A super-step of 21 stages at its longest, 520 of them.
-TEXT = ("particles: blob.h5\noutput: {folder: FOLDER, name: x}\ntime: {end: 1 Gyr, steps: 520}\n"
-        "diffusion: {parallel: 3e28 cm^2/s, perpendicular: 3e26 cm^2/s}\nstepping: {fixed: 1 Gyr}\n")
+# A super-step of 21 stages at its longest, 1000 of them.
+TEXT = ("particles: blob.h5\noutput: {folder: FOLDER, name: x}\ntime: {end: 2 Gyr, steps: 1000}\n"
+        "diffusion: {parallel: 3e28 cm^2/s, perpendicular: 3e26 cm^2/s}\nstepping: {fixed: 2 Gyr}\n")
 
 
 def check_books(where, boundary):
