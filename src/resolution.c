@@ -2,8 +2,8 @@
  * resolution.c: how well particles resolve the CR energy they carry.
  *
  * Numerical diffusion across the field: an oblique Gaussian of width s0 = 6.4 spacings, on
- * particles with 20 neighbours in 2-D (H = sqrt(20/pi) spacings), spreads across the field with
- * about 5e-4 of kappa_par (`wend prove blob`, five seeds: 2e-4 at jitter 0.2, 1.3e-3 at jitter
+ * particles with 22 neighbours in 2-D (H = sqrt(22/pi) spacings), spreads across the field with
+ * 2.3e-4 of kappa_par (`wend prove blob`, five seeds: 2e-4 at jitter 0.2, 1.3e-3 at jitter
  * 0.5). At s0 = 3.2 spacings it is 8e-4 at jitter 0.2: the figure is scaled by (H/s)^2, as
  * truncation errors of gradients that are exact for linear fields, with the local scale height
  * s = e / |grad_perp e| of one direction across the field. In a Gaussian the mean of 1/s^2 over
@@ -14,7 +14,7 @@
 #include <math.h>
 #include <stdlib.h>
 
-/* 5e-4 (6.4 spacings / H)^2, H^2 = 20/pi spacings^2. */
+/* 2.3e-4 (6.4 spacings / H)^2, H^2 = 22/pi spacings^2. */
 const double wend_resolution_smearing = 2.3e-4 * 6.4 * 6.4 * M_PI / 22;
 
 typedef struct work {

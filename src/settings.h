@@ -14,7 +14,8 @@ typedef struct wend_settings {
   bool fix_volumes;      /**< sum_j A_ij.r_ij = 2 D V_i; off only to show what it is worth */
   double angle_power;    /**< p: power of the squared cosine in the low-order exchange */
   double angle_share;    /**< phi: share of it that is kept along the field */
-  bool sharpen;          /**< undo the second-order smoothing of slopes and faces */
+  bool sharpen;          /**< undo the second-order smoothing of slopes and faces; not beside
+                           streaming, whose saturated flux has no modes to sharpen */
   bool limited;          /**< flux limiter; off only in tests of the linear operator */
   bool isotropic_unmagnetised; /**< where B = 0: (kappa_par + 2 kappa_perp) / 3, else none */
   double streaming_length;     /**< ell, absolute; 0: not so */

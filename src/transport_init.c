@@ -238,7 +238,7 @@ wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
     wend_operator_escape(&near->pairs, near->all, &source, &geometry->faces, geometry->surface,
                          t->escape);
   limit_step(team, t, sum_both);
-  WEND_TRY(build_pairs(team, &source, settings->sharpen, t));
+  WEND_TRY(build_pairs(team, &source, settings->sharpen && !t->streams, t));
   WEND_TRY(allocate_state(team, t));
 done:
   free(sum_both);

@@ -146,8 +146,7 @@ static const wend_key keys[] = {
     {"exchange.angle_share", NUMBER(0, 1), AT(settings.angle_share),
      .meaning = "share of the low-order exchange that is kept along the field"},
     {"exchange.sharpen", SWITCH, AT(settings.sharpen),
-     .meaning =
-         "undo the second-order smoothing of slopes and faces; no saves a fifth of a stage"},
+     .meaning = "undo the second-order smoothing of slopes and faces (never beside streaming)"},
 
     {"stepping.scheme", NAME, AT(settings.supertime), .names = scheme_name,
      .meaning = "super-time-stepping family"},
