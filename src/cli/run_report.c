@@ -2,6 +2,7 @@
  * run_report.c: what `wend run` says at its end. */
 #include "run_report.h"
 #include "resolution.h"
+#include "total.h"
 #include <errno.h>
 #include <inttypes.h>
 #include <stdlib.h>
@@ -16,6 +17,7 @@ static const double megayear = 1e6 * 365.25 * 86400;
 typedef struct figures {
   double supports, pairs, faces, stage; /* seconds, of the slowest rank */
   int64_t memory;                       /* peak of all ranks together, kB */
+  double filled;                        /* volumes of all particles over that of the box */
   wend_resolution resolution;
 } figures;
 
@@ -34,12 +36,20 @@ static int64_t peak_memory(void) {
   return peak;
 }
 
+static double filled(wend_team *team, const wend_run *run) {
+  const wend_domain *d = &run->domain;
+  double box = d->thickness;
+  for (int a = 0; a < d->dim; a++) box *= d->hi[a] - d->lo[a];
+  return wend_total_of(team, run->particles.n, run->geometry.volume) / box;
+}
+
 static wend_status measure(wend_team *team, const wend_run *run, double stage, figures *f) {
   const wend_geometry_report *g = &run->geometry.report;
   double seconds[4] = {g->seconds_supports, g->seconds_pairs, g->seconds_faces, stage};
   f->memory = peak_memory(); /* before the report takes its own */
   wend_team_max(team, 4, seconds);
   wend_team_count(team, 1, &f->memory);
+  f->filled = filled(team, run);
   f->supports = seconds[0];
   f->pairs = seconds[1];
   f->faces = seconds[2];
@@ -107,13 +117,14 @@ static void put_resolution(FILE *out, const wend_run *run, const figures *f) {
   fprintf(
       out,
       "                   numerical: %.2g kappa_par (H/s)^2, s = e/|grad_perp e|: scaled from\n"
-      "                   2.3e-4 at s = 6.4 spacings in 2-D, the worst of five seeds, as "
-      "measured by `wend prove blob`\n",
+      "                   2.3e-4 at s = 6.4 spacings in 2-D, as measured by `wend prove "
+      "blob`\n",
       wend_resolution_smearing);
   fprintf(out, "  faces            closure %.2e, raw %.2e\n", g->closure, g->closure_raw);
   fprintf(out, "  volume condition mean %.5f, raw %.5f, rms %.2e\n", g->span_mean, g->span_raw,
           g->span_rms);
-  fprintf(out, "  volumes from     %s\n", volume_text(run->volumes));
+  fprintf(out, "  volumes          %s: %.4f of the box\n", volume_text(run->volumes),
+          f->filled);
   fprintf(out, "  gradients        %.3g of the particles fell back to the isotropic form\n",
           (double)g->fallbacks / (double)run->total);
   fprintf(out, "  limiter          works on %.3g of the pairs\n", r->limited);
