@@ -15,13 +15,14 @@
 static const double widen = 1.4142135623730951;
 
 /* Radius of a ball that holds `target` particles where the eight of a leaf fill its box: boxes
- * of eight scattered points span about 0.6 of the volume that is theirs, an axis each. */
+ * of eight scattered points span about 0.6 of what is theirs, an axis each. Leaves come long
+ * and flat as well as round: a side counts as a quarter of the longest at least. */
 static double guess(const double *lo, const double *hi, int dim, double target) {
-  double side = 0;
-  for (int a = 0; a < dim; a++) side = fmax(side, hi[a] - lo[a]);
-  side *= 1.6;
+  double longest = 0, volume = 1;
+  for (int a = 0; a < dim; a++) longest = fmax(longest, hi[a] - lo[a]);
+  for (int a = 0; a < dim; a++) volume *= 1.6 * fmax(hi[a] - lo[a], longest / 4);
   const double ball = dim == 2 ? M_PI : 4 * M_PI / 3;
-  return pow(target * pow(side, dim) / (WEND_LEAF * ball), 1.0 / dim);
+  return pow(target * volume / (WEND_LEAF * ball), 1.0 / dim);
 }
 
 /* The widest trial that can make sense: half the shortest period, or the whole box. */
