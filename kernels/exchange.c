@@ -65,8 +65,8 @@ typedef struct balance {
 } balance;
 
 static inline void add_entry(balance *b, int l, double t, double de) {
-  b->enter[l] += most(t, 0);
-  b->leave[l] += least(t, 0);
+  b->enter[l] += 0.5 * (t + fabs(t));
+  b->leave[l] += 0.5 * (t - fabs(t));
   b->high[l] = most(b->high[l], de);
   b->low[l] = least(b->low[l], de);
 }
@@ -86,7 +86,7 @@ void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
                                 const float *restrict alpha, const float *restrict beta,
                                 const float *restrict kept, const double *restrict sum_full,
                                 const double (*restrict state)[2],
-                                double *restrict antidiffusive, double (*restrict ratio)[2]) {
+                                float *restrict antidiffusive, double (*restrict ratio)[2]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     lanes own, q;
@@ -104,7 +104,7 @@ void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
       for (int l = 0; l < WEND_LANES; l++) {
         const double de = e[l] - own[l];
         const double f = alpha[k + l] * q[l] + beta[k + l] * qj[l];
-        const double anti = -(f + kept[k + l] * de);
+        const float anti = (float)-(f + kept[k + l] * de);
         antidiffusive[k + l] = anti;
         add_entry(&b, l, anti, de);
       }
@@ -116,8 +116,8 @@ void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
 void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,
                                float *const area[3], const float *restrict kept,
                                const double *restrict sum_full,
-                               const double (*restrict state)[4],
-                               double *restrict antidiffusive, double (*restrict ratio)[2]) {
+                               const double (*restrict state)[4], float *restrict antidiffusive,
+                               double (*restrict ratio)[2]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     lanes own[4];
@@ -134,7 +134,7 @@ void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,
                           area[1][k + l] * (own[2][l] + other[2][l]) +
                           area[2][k + l] * (own[3][l] + other[3][l])) /
                          2;
-        const double anti = -(f + kept[k + l] * de);
+        const float anti = (float)-(f + kept[k + l] * de);
         antidiffusive[k + l] = anti;
         add_entry(&b, l, anti, de);
       }
@@ -150,26 +150,31 @@ static inline double correction(double t, const double *own, const double *other
   return t > 0 ? in : out;
 }
 
+/* C t = in t for t > 0, else out t, to the same bits, by arithmetic alone: compilers turn a
+ * choice by the sign of a float into a branch. */
+static inline double corrected(double t, double in, double out) {
+  return 0.5 * (in * (t + fabs(t)) + out * (t - fabs(t)));
+}
+
 void wend_exchange_rate(const wend_pairs *pairs, wend_slices slices, const float *restrict kept,
                         const double *restrict state, int width,
-                        const double *restrict antidiffusive, const double (*restrict ratio)[2],
+                        const float *restrict antidiffusive, const double (*restrict ratio)[2],
                         double *restrict rate) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
-    lanes own, sum = {0};
-    double r[WEND_LANES][2];
+    lanes own, enter, leave, sum = {0};
     for (int l = 0; l < WEND_LANES; l++) {
       const int32_t i = row_of(pairs, slice, l);
       own[l] = state[(int64_t)i * width];
-      r[l][0] = ratio[i][0];
-      r[l][1] = ratio[i][1];
+      enter[l] = ratio[i][0];
+      leave[l] = ratio[i][1];
     }
     for (int64_t k = pairs->first[slice]; k < pairs->first[slice + 1]; k += WEND_LANES)
       for (int l = 0; l < WEND_LANES; l++) {
         const int32_t j = pairs->index[k + l];
-        const double anti = antidiffusive[k + l];
+        const double in = least(enter[l], ratio[j][1]), out = least(leave[l], ratio[j][0]);
         sum[l] += kept[k + l] * (state[(int64_t)j * width] - own[l]) +
-                  correction(anti, r[l], ratio[j]) * anti;
+                  corrected(antidiffusive[k + l], in, out);
       }
     for (int l = 0; l < wend_pairs_lanes(pairs, slice); l++)
       rate[slice * WEND_LANES + l] = sum[l];
@@ -177,7 +182,7 @@ void wend_exchange_rate(const wend_pairs *pairs, wend_slices slices, const float
 }
 
 void wend_exchange_count_limited(const wend_pairs *pairs, wend_slices slices,
-                                 const double *restrict antidiffusive,
+                                 const float *restrict antidiffusive,
                                  const double (*restrict ratio)[2], int64_t counts[2]) {
   counts[0] = counts[1] = 0;
   for (int32_t t = 0; t < slices.n; t++)

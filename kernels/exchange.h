@@ -36,26 +36,26 @@ void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
                                 const float *restrict alpha, const float *restrict beta,
                                 const float *restrict kept, const double *restrict sum_full,
                                 const double (*restrict state)[2],
-                                double *restrict antidiffusive, double (*restrict ratio)[2]);
+                                float *restrict antidiffusive, double (*restrict ratio)[2]);
 
 /** Pass 2 in full. */
 void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,
                                float *const area[3], const float *restrict kept,
                                const double *restrict sum_full,
                                const double (*restrict state)[4],
-                               double *restrict antidiffusive, double (*restrict ratio)[2]);
+                               float *restrict antidiffusive, double (*restrict ratio)[2]);
 
 /** Pass 3: rate [rows] = dE/dt by exchange. `width` is the stride of state (2 or 4), whose
  * first value is e. */
 void wend_exchange_rate(const wend_pairs *pairs, wend_slices slices, const float *restrict kept,
                         const double *restrict state, int width,
-                        const double *restrict antidiffusive, const double (*restrict ratio)[2],
+                        const float *restrict antidiffusive, const double (*restrict ratio)[2],
                         double *restrict rate);
 
 /** Counts entries of which the limiter keeps less than all (C_ij < 1 with t_ij != 0), and
  * entries with t_ij != 0. Each pair is seen from both its ends. */
 void wend_exchange_count_limited(const wend_pairs *pairs, wend_slices slices,
-                                 const double *restrict antidiffusive,
+                                 const float *restrict antidiffusive,
                                  const double (*restrict ratio)[2], int64_t counts[2]);
 
 #endif

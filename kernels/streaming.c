@@ -119,7 +119,7 @@ void wend_streaming_ratios(const wend_pairs *pairs, wend_slices slices,
                            const wend_streaming_source *source,
                            const wend_streaming_pairs *columns, const double *restrict room,
                            const double (*restrict state)[2], float *restrict kept,
-                           double *restrict antidiffusive, double (*restrict ratio)[2]) {
+                           float *restrict antidiffusive, double (*restrict ratio)[2]) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     balance b = {{0}, {0}, {0}, {0}, {0}};
@@ -135,7 +135,7 @@ void wend_streaming_ratios(const wend_pairs *pairs, wend_slices slices,
       kept[k] = (float)(columns->share[k] * a);
       columns->fraction[k] = all > 0 ? (float)(stream / all) : 0;
       const double f = alpha[k] * state[i][1] + beta[k] * state[j][1];
-      const double anti = -(f + kept[k] * de);
+      const float anti = (float)-(f + kept[k] * de);
       antidiffusive[k] = anti;
       b.full[l] += a;
       b.enter[l] += most(anti, 0);
@@ -155,7 +155,7 @@ static inline double correction(double t, const double *own, const double *other
 void wend_streaming_heat(const wend_pairs *pairs, wend_slices slices,
                          const float *restrict kept, const float *restrict fraction,
                          const double (*restrict state)[2], const double *restrict root,
-                         const double *restrict antidiffusive,
+                         const float *restrict antidiffusive,
                          const double (*restrict ratio)[2], double *restrict heat) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];

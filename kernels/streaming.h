@@ -69,14 +69,14 @@ void wend_streaming_ratios(const wend_pairs *pairs, wend_slices slices,
                            const wend_streaming_source *source,
                            const wend_streaming_pairs *columns, const double *restrict room,
                            const double (*restrict state)[2], float *restrict kept,
-                           double *restrict antidiffusive, double (*restrict ratio)[2]);
+                           float *restrict antidiffusive, double (*restrict ratio)[2]);
 
 /** Pass 3, after wend_exchange_rate: the sum over pairs of each row's half of the heat, which
  * may be negative before it is clipped at the particle. heat [rows]. root [n] is e^(1/4). */
 void wend_streaming_heat(const wend_pairs *pairs, wend_slices slices,
                          const float *restrict kept, const float *restrict fraction,
                          const double (*restrict state)[2], const double *restrict root,
-                         const double *restrict antidiffusive,
+                         const float *restrict antidiffusive,
                          const double (*restrict ratio)[2], double *restrict heat);
 
 #endif

@@ -30,7 +30,7 @@ typedef struct flow {
   double *full, *both; /* [rows] sums of a and of a + s */
   double *kappa_along; /* [rows] */
   double *state;       /* [rows][width] */
-  double *anti;        /* [entries] */
+  float *anti;         /* [entries] */
   double (*ratio)[2];
   double *rate;
   double step; /* forward-Euler limit */
@@ -152,7 +152,7 @@ static void ratios_by_formula(const flow *f, int32_t i, double r[2]) {
   for (int32_t m = 0; m < p->count[i]; m++) {
     const int64_t k = wend_pairs_entry(p, i, m);
     const double rise = *value(f, p->index[k]) - *value(f, i);
-    const double t = -(flux_of(f, i, k) + f->kept[k] * rise);
+    const float t = (float)-(flux_of(f, i, k) + f->kept[k] * rise);
     if (t > 0) in += t;
     if (t < 0) out += t;
     top = fmax(top, rise);
@@ -166,7 +166,7 @@ static void ratios_by_formula(const flow *f, int32_t i, double r[2]) {
 static double enters(const flow *f, int32_t i, int64_t k) {
   const int32_t j = f->w->l.pairs.index[k];
   const double rise = *value(f, j) - *value(f, i);
-  const double t = -(flux_of(f, i, k) + f->kept[k] * rise);
+  const float t = (float)-(flux_of(f, i, k) + f->kept[k] * rise);
   const double c =
       t > 0 ? fmin(f->ratio[i][0], f->ratio[j][1]) : fmin(f->ratio[i][1], f->ratio[j][0]);
   return f->kept[k] * rise + c * t;
