@@ -351,6 +351,27 @@ START_TEST(times_are_hit_exactly) {
 }
 END_TEST
 
+/* From before 0 to short after it in a single step: start + (end - start) is not the end. */
+START_TEST(ends_are_not_rounded) {
+  const wend_settings s = settings_of(true);
+  run r;
+  run_begin(&r, &team, &closed, GAS_CUT, &s, GAS_SMOOTH);
+  const double unit = r.g.transport.explicit_step, start = -0.8 * unit;
+  int rounded = 0;
+  for (int k = 1; k <= 40; k++) {
+    const double until = 1e-3 * unit * k / 81;
+    ck_assert(wend_march_init(&team, &s, &r.g.transport, r.g.particles.column[WEND_ENERGY],
+                              start, &r.march) == WEND_OK);
+    ck_assert(wend_march_step(&team, &r.march, until) == WEND_OK);
+    ck_assert(r.march.time == until && r.march.steps == 1);
+    rounded += start + (until - start) != until;
+    wend_march_reset(&r.march);
+  }
+  ck_assert_int_gt(rounded, 20);
+  run_end(&r);
+}
+END_TEST
+
 /* ---- the same bits ---- */
 
 static bool same_march(const wend_march *a, const wend_march *b) {
@@ -476,6 +497,7 @@ int main(int count, char **arguments) {
   tcase_add_loop_test(tc, books_close, 0, 2);
   tcase_add_loop_test(tc, constants_keep_their_bits, 0, 4);
   tcase_add_test(tc, times_are_hit_exactly);
+  tcase_add_test(tc, ends_are_not_rounded);
   tcase_add_loop_test(tc, bits_do_not_depend_on_ranks, 0, 8);
   suite_add_tcase(suite, tc);
   tc = tcase_create("errors");

@@ -8,6 +8,7 @@
 #include <check.h>
 #include <math.h>
 #include <stdlib.h>
+#include <string.h>
 
 enum { TERMS = 4000, COLUMNS = 5 };
 
@@ -62,6 +63,25 @@ START_TEST(several_sums_travel_together) {
 }
 END_TEST
 
+/* Not the value alone: the limbs are those of one rank that adds all terms. */
+START_TEST(limbs_do_not_depend_on_ranks) {
+  double *mine = malloc(TERMS * sizeof *mine), unused;
+  wend_sum shared, alone;
+  wend_sum_reset(&shared);
+  wend_sum_reset(&alone);
+  wend_sum_add(&shared, deal(ways[_i], 30, mine, &unused), mine, 1);
+  wend_total(&team, 1, &shared);
+  const int ranks = team.size, rank = team.rank;
+  team.size = 1;
+  team.rank = 0;
+  wend_sum_add(&alone, deal(SPREAD_FIRST, 30, mine, &unused), mine, 1);
+  team.size = ranks;
+  team.rank = rank;
+  ck_assert(spread_everywhere(memcmp(&shared, &alone, sizeof shared) == 0));
+  free(mine);
+}
+END_TEST
+
 /* What plain sums lose: 1e300 on the first rank, -1e300 on the last, 1e-300 on each. */
 START_TEST(nothing_is_too_small) {
   const double term[3] = {team.rank == 0 ? 1e300 : 0, 1e-300,
@@ -92,6 +112,7 @@ int main(int count, char **arguments) {
   TCase *tc = tcase_create("total");
   tcase_add_loop_test(tc, totals_are_exact, 0, WAYS);
   tcase_add_loop_test(tc, several_sums_travel_together, 0, WAYS);
+  tcase_add_loop_test(tc, limbs_do_not_depend_on_ranks, 0, WAYS);
   tcase_add_test(tc, nothing_is_too_small);
   tcase_add_test(tc, nan_and_infinities_reach_all);
   tcase_add_test(tc, no_terms_are_zero);
