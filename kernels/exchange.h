@@ -10,6 +10,9 @@
  * smallest e_j - e_i, 0 included), R = min(1, Q/P), and C_ij = min(R+_i, R-_j) for t_ij > 0,
  * else min(R-_i, R+_j). No new extremum.
  *
+ * t_ij is rounded to float once, in pass 2; sums and limits use the rounded value, so that bounds
+ * and the total hold to the last bit of a double.
+ *
  * Every quantity of a pair is odd or even under the exchange of its ends bit for bit, so the
  * exchange conserves the total. Between passes the ghosts of the column just written must be
  * filled. */
@@ -42,8 +45,8 @@ void wend_exchange_ratios_along(const wend_pairs *pairs, wend_slices slices,
 void wend_exchange_ratios_full(const wend_pairs *pairs, wend_slices slices,
                                float *const area[3], const float *restrict kept,
                                const double *restrict sum_full,
-                               const double (*restrict state)[4],
-                               float *restrict antidiffusive, double (*restrict ratio)[2]);
+                               const double (*restrict state)[4], float *restrict antidiffusive,
+                               double (*restrict ratio)[2]);
 
 /** Pass 3: rate [rows] = dE/dt by exchange. `width` is the stride of state (2 or 4), whose
  * first value is e. */

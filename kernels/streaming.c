@@ -155,8 +155,8 @@ static inline double correction(double t, const double *own, const double *other
 void wend_streaming_heat(const wend_pairs *pairs, wend_slices slices,
                          const float *restrict kept, const float *restrict fraction,
                          const double (*restrict state)[2], const double *restrict root,
-                         const float *restrict antidiffusive,
-                         const double (*restrict ratio)[2], double *restrict heat) {
+                         const float *restrict antidiffusive, const double (*restrict ratio)[2],
+                         double *restrict heat) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     lanes sum = {0};

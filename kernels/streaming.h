@@ -76,7 +76,7 @@ void wend_streaming_ratios(const wend_pairs *pairs, wend_slices slices,
 void wend_streaming_heat(const wend_pairs *pairs, wend_slices slices,
                          const float *restrict kept, const float *restrict fraction,
                          const double (*restrict state)[2], const double *restrict root,
-                         const float *restrict antidiffusive,
-                         const double (*restrict ratio)[2], double *restrict heat);
+                         const float *restrict antidiffusive, const double (*restrict ratio)[2],
+                         double *restrict heat);
 
 #endif

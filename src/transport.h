@@ -31,7 +31,7 @@ typedef struct wend_transport {
   double *heat;                /**< [owned] streaming heat a time, after each rate */
   int64_t ceilings;            /**< particles whose v_A was cut to the ceiling; all ranks */
   double *state;               /**< [local][width] e and flux */
-  float *antidiffusive;       /**< [entries] t_ij */
+  float *antidiffusive;        /**< [entries] t_ij */
   double (*ratio)[2];          /**< [local] R+, R- */
   double
       explicit_step; /**< forward-Euler limit min V / sum (a + s + escape) over all particles */
