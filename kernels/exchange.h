@@ -10,8 +10,8 @@
  * smallest e_j - e_i, 0 included), R = min(1, Q/P), and C_ij = min(R+_i, R-_j) for t_ij > 0,
  * else min(R-_i, R+_j). No new extremum.
  *
- * t_ij is rounded to float once, in pass 2; sums and limits use the rounded value, so that bounds
- * and the total hold to the last bit of a double.
+ * t_ij is rounded to float once, in pass 2; sums and limits use the rounded value, so that
+ * bounds and the total hold to the last bit of a double.
  *
  * Every quantity of a pair is odd or even under the exchange of its ends bit for bit, so the
  * exchange conserves the total. Between passes the ghosts of the column just written must be
