@@ -136,8 +136,6 @@ static wend_status build_pairs(wend_team *team, const wend_operator_source *sour
   wend_geometry *g = t->geometry;
   const int64_t entries = wend_neighbours_entries(&g->near);
   const wend_pairs *pairs = &g->near.pairs;
-  free(g->faces.weight);
-  g->faces.weight = NULL;
   if (sharpen) t->mu = wend_allocate(team, entries, sizeof(float));
   if (t->along) t->slope = wend_allocate(team, entries, sizeof(float));
   const wend_status status = wend_agree(team);
@@ -227,6 +225,8 @@ wend_status wend_transport_init(wend_team *team, const wend_settings *settings,
                                        .kappa = (const double(*)[2])t->kappa,
                                        .angle_power = settings->angle_power,
                                        .angle_share = settings->angle_share};
+  free(geometry->faces.weight);
+  geometry->faces.weight = NULL;
   WEND_TRY(allocate(team, t));
   for (int32_t i = 0; i < near->owned; i++) t->kappa_along[i] = t->kappa[i][0];
   if (t->streams)
