@@ -50,6 +50,19 @@ static wend_settings settings_of(bool limited) {
   return s;
 }
 
+/* Linear exchange, limited exchange, and that with streaming, which needs kappa_perp = 0. */
+enum { LINEAR, LIMITED, STREAMING, MODES };
+
+static bool possible(const gas_plan *plan, int mode) {
+  return mode != STREAMING || (!plan->across && !plan->unmagnetised);
+}
+
+static wend_settings settings_for(int mode) {
+  wend_settings s = settings_of(mode != LINEAR);
+  s.streaming_supports = mode == STREAMING ? 5 : 0;
+  return s;
+}
+
 /* ---- the same bits ---- */
 
 static bool same_column(wend_team *self, const gas *alone, const double *expected,
@@ -69,6 +82,9 @@ static void same_flows(wend_team *self, gas *alone, gas *shared) {
     ck_assert(
         spread_everywhere(same_column(self, alone, expected.rate, shared, found.rate) &&
                           same_column(self, alone, expected.escaped, shared, found.escaped)));
+    if (alone->transport.streams)
+      ck_assert(spread_everywhere(
+          same_column(self, alone, alone->transport.heat, shared, shared->transport.heat)));
     ck_assert(
         spread_everywhere(wend_transport_limited_share(&team, &shared->transport) == share));
     flow_free(&expected);
@@ -78,8 +94,9 @@ static void same_flows(wend_team *self, gas *alone, gas *shared) {
 
 START_TEST(bits_do_not_depend_on_ranks) {
   wend_team self = gas_alone();
-  for (int limited = 0; limited < 2; limited++) {
-    const wend_settings settings = settings_of(limited);
+  for (int mode = 0; mode < MODES; mode++) {
+    if (!possible(&plans[_i], mode)) continue;
+    const wend_settings settings = settings_for(mode);
     gas alone = {.all = 0};
     ck_assert(gas_build(&self, &plans[_i], GAS_CUT, &settings, &alone) == WEND_OK);
     for (int k = 0; k < WAYS; k++) {
@@ -100,56 +117,74 @@ END_TEST
 
 /* ---- totals and bounds ---- */
 
-/* What leaves is booked, the rest only moves: rounding of the rows' sums, 1e-15 of what moves.
- */
+/* What leaves and what heats is booked, the rest only moves: rounding of the rows' sums, 1e-15
+ * of what moves. */
+static void keeps_total(gas *g, const gas_plan *plan, gas_state state) {
+  flow f = flow_of(&team, g, state);
+  const int32_t n = g->particles.n;
+  const double *heat = g->transport.heat;
+  const double gone = wend_total_of(&team, n, f.escaped);
+  const double warmed = g->transport.streams ? wend_total_of(&team, n, heat) : 0;
+  for (int32_t i = 0; i < n; i++) f.rate[i] += f.escaped[i] + (heat != NULL ? heat[i] : 0);
+  const double total = wend_total_of(&team, n, f.rate);
+  for (int32_t i = 0; i < n; i++) f.rate[i] = fabs(f.rate[i]);
+  const double moved = wend_total_of(&team, n, f.rate);
+  ck_assert(spread_everywhere(fabs(total) <= 1e-15 * moved + 1e-16 * (gone + warmed)));
+  ck_assert(spread_everywhere(plan->open == (gone > 0)));
+  ck_assert(spread_everywhere(warmed >= 0));
+  /* e = E / V is the same everywhere but for its rounding. */
+  gas_energise(g, GAS_CONSTANT);
+  const double still = wend_total_of(&team, n, g->particles.column[WEND_ENERGY]) * 1e-15 /
+                       g->transport.explicit_step;
+  ck_assert(spread_everywhere((state == GAS_CONSTANT) == (moved <= still)));
+  if (g->transport.streams)
+    ck_assert(spread_everywhere((state == GAS_CONSTANT) == (warmed <= still)));
+  flow_free(&f);
+}
+
 START_TEST(totals_are_kept) {
-  const wend_settings settings = settings_of(true);
-  gas g = {.all = 0};
-  ck_assert(gas_build(&team, &plans[_i], GAS_CUT, &settings, &g) == WEND_OK);
-  for (int state = 0; state < GAS_STATES; state++) {
-    flow f = flow_of(&team, &g, (gas_state)state);
-    const double gone = wend_total_of(&team, g.particles.n, f.escaped);
-    for (int32_t i = 0; i < g.particles.n; i++) f.rate[i] += f.escaped[i];
-    const double total = wend_total_of(&team, g.particles.n, f.rate);
-    for (int32_t i = 0; i < g.particles.n; i++) f.rate[i] = fabs(f.rate[i]);
-    const double moved = wend_total_of(&team, g.particles.n, f.rate);
-    ck_assert(spread_everywhere(fabs(total) <= 1e-15 * moved + 1e-16 * gone));
-    ck_assert(spread_everywhere(plans[_i].open == (gone > 0)));
-    /* e = E / V is the same everywhere but for its rounding. */
-    gas_energise(&g, GAS_CONSTANT);
-    const double still = wend_total_of(&team, g.particles.n, g.particles.column[WEND_ENERGY]) *
-                         1e-15 / g.transport.explicit_step;
-    ck_assert(spread_everywhere((state == GAS_CONSTANT) == (moved <= still)));
-    flow_free(&f);
+  for (int mode = LIMITED; mode < MODES; mode++) {
+    if (!possible(&plans[_i], mode)) continue;
+    const wend_settings settings = settings_for(mode);
+    gas g = {.all = 0};
+    ck_assert(gas_build(&team, &plans[_i], GAS_CUT, &settings, &g) == WEND_OK);
+    for (int state = 0; state < GAS_STATES; state++)
+      keeps_total(&g, &plans[_i], (gas_state)state);
+    gas_reset(&g);
   }
-  gas_reset(&g);
 }
 END_TEST
 
 /* Forward Euler at the explicit step: no energy below 0, none above the largest; 1e-13 of it
- * for sums of 100 terms. Escape may lower the least value. */
-START_TEST(explicit_steps_keep_bounds) {
-  const wend_settings settings = settings_of(true);
-  gas g = {.all = 0};
-  ck_assert(gas_build(&team, &plans[_i], GAS_CUT, &settings, &g) == WEND_OK);
-  for (int state = 0; state < GAS_STATES; state++) {
-    double range[4] = {-INFINITY, -INFINITY, -INFINITY, -INFINITY};
-    flow f = flow_of(&team, &g, (gas_state)state);
-    for (int32_t i = 0; i < g.particles.n; i++) {
-      const double e = g.particles.column[WEND_ENERGY][i] / g.geometry.volume[i];
-      const double next = e + g.transport.explicit_step * f.rate[i] / g.geometry.volume[i];
-      range[0] = fmax(range[0], -e);
-      range[1] = fmax(range[1], e);
-      range[2] = fmax(range[2], -next);
-      range[3] = fmax(range[3], next);
-    }
-    wend_team_max(&team, 4, range);
-    const double give = 1e-13 * range[1];
-    ck_assert(range[3] <= range[1] + give);
-    ck_assert(range[2] <= (plans[_i].open ? 0 : range[0]) + give);
-    flow_free(&f);
+ * for sums of 100 terms. Escape and heat may lower the least value. */
+static void keeps_bounds(gas *g, bool lowered, gas_state state) {
+  double range[4] = {-INFINITY, -INFINITY, -INFINITY, -INFINITY};
+  flow f = flow_of(&team, g, state);
+  for (int32_t i = 0; i < g->particles.n; i++) {
+    const double e = g->particles.column[WEND_ENERGY][i] / g->geometry.volume[i];
+    const double next = e + g->transport.explicit_step * f.rate[i] / g->geometry.volume[i];
+    range[0] = fmax(range[0], -e);
+    range[1] = fmax(range[1], e);
+    range[2] = fmax(range[2], -next);
+    range[3] = fmax(range[3], next);
   }
-  gas_reset(&g);
+  wend_team_max(&team, 4, range);
+  const double give = 1e-13 * range[1];
+  ck_assert(range[3] <= range[1] + give);
+  ck_assert(range[2] <= (lowered ? 0 : range[0]) + give);
+  flow_free(&f);
+}
+
+START_TEST(explicit_steps_keep_bounds) {
+  for (int mode = LIMITED; mode < MODES; mode++) {
+    if (!possible(&plans[_i], mode)) continue;
+    const wend_settings settings = settings_for(mode);
+    gas g = {.all = 0};
+    ck_assert(gas_build(&team, &plans[_i], GAS_CUT, &settings, &g) == WEND_OK);
+    for (int state = 0; state < GAS_STATES; state++)
+      keeps_bounds(&g, plans[_i].open || mode == STREAMING, (gas_state)state);
+    gas_reset(&g);
+  }
 }
 END_TEST
 

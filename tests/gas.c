@@ -33,6 +33,7 @@ static void dress(const gas_plan *plan, wend_particles *p) {
     column[WEND_KPAR][i] = y > 0.2 ? 0.03 * pow(10, 2 * u - 1) : 1 + 0.1 * u;
     column[WEND_KPERP][i] = plan->across ? 0.05 * chance(p->id[i], 3) : 0;
     if (none && !plan->across && !plan->unmagnetised) column[WEND_KPAR][i] = 0;
+    column[WEND_DENSITY][i] = 1 + chance(p->id[i], 5);
   }
 }
 
@@ -43,7 +44,8 @@ static wend_status fill_alone(const gas_plan *plan, const wend_domain *domain,
       {plan->side, plan->side, plan->dim == 3 ? plan->side : 1}, plan->jitter, 7};
   uint64_t mask = 0;
   for (int a = 0; a < 3; a++) mask |= UINT64_C(1) << (WEND_BX + a);
-  mask |= UINT64_C(1) << WEND_KPAR | UINT64_C(1) << WEND_KPERP | UINT64_C(1) << WEND_ENERGY;
+  mask |= UINT64_C(1) << WEND_KPAR | UINT64_C(1) << WEND_KPERP | UINT64_C(1) << WEND_ENERGY |
+          UINT64_C(1) << WEND_DENSITY;
   wend_team alone = gas_alone();
   wend_status status = wend_lattice_fill(&alone, domain, &lattice, mask, p);
   if (status == WEND_OK) dress(plan, p);

@@ -22,7 +22,7 @@ typedef struct gas {
   wend_domain domain;
   wend_settings settings;
   int32_t all;              /**< particles on all ranks; ids are 1 to this */
-  wend_particles particles; /**< with B, kappa_par, kappa_perp and energy */
+  wend_particles particles; /**< with B, kappa_par, kappa_perp, density and energy */
   wend_geometry geometry;
   wend_transport transport;
 } gas;
