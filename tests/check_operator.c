@@ -195,6 +195,21 @@ START_TEST(gradients_of_linear_fields_are_exact) {
 }
 END_TEST
 
+START_TEST(gradients_may_take_the_place_of_arms) {
+  web w = dressed(&plans[_i], true, 9);
+  const wend_operator_source source = web_operator(&w);
+  const size_t size = (size_t)web_entries(&w) * sizeof(float);
+  float *c[3] = {web_column(&w), web_column(&w), web_column(&w)};
+  wend_operator_gradient(&w.l.pairs, w.l.all, &source, w.faces.arm, c);
+  wend_operator_gradient(&w.l.pairs, w.l.all, &source, w.faces.arm, w.faces.arm);
+  for (int a = 0; a < 3; a++) {
+    ck_assert(memcmp(c[a], w.faces.arm[a], size) == 0);
+    free(c[a]);
+  }
+  web_destroy(&w);
+}
+END_TEST
+
 START_TEST(halves_of_the_flux_are_odd) {
   web w = dressed(&plans[_i], true, 4);
   float *alpha = web_column(&w), *beta = web_column(&w);
@@ -334,6 +349,7 @@ int main(void) {
   tcase_add_loop_test(tc, low_order_follows_the_formula, 0, PLANS);
   tcase_add_loop_test(tc, what_is_kept_is_a_share_of_the_whole, 0, PLANS);
   tcase_add_loop_test(tc, gradients_of_linear_fields_are_exact, 0, PLANS);
+  tcase_add_loop_test(tc, gradients_may_take_the_place_of_arms, 0, PLANS);
   tcase_add_loop_test(tc, halves_of_the_flux_are_odd, 0, PLANS);
   tcase_add_loop_test(tc, padding_is_zero_and_changes_nothing, 0, PLANS);
   tcase_add_test(tc, coincident_particles_exchange_nothing);
