@@ -102,7 +102,7 @@ static void fit_slopes(const wend_pairs *pairs, int32_t slice,
 
 void wend_operator_slope(const wend_pairs *pairs, wend_slices slices,
                          const wend_operator_source *source, float *const arm[3],
-                         float *restrict slope) {
+                         float *slope) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     const int lanes = wend_pairs_lanes(pairs, slice);
@@ -119,8 +119,8 @@ void wend_operator_slope(const wend_pairs *pairs, wend_slices slices,
 }
 
 void wend_operator_along(const wend_pairs *pairs, wend_slices slices,
-                         const double (*restrict field)[3], float *const area[3],
-                         float *restrict alpha, float *restrict beta) {
+                         const double (*restrict field)[3], float *const area[3], float *alpha,
+                         float *beta) {
   for (int32_t t = 0; t < slices.n; t++) {
     const int32_t slice = slices.list[t];
     const int lanes = wend_pairs_lanes(pairs, slice);

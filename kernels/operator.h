@@ -35,15 +35,16 @@ void wend_operator_low_order(const wend_pairs *pairs, wend_slices slices,
                              float *restrict kept, double *restrict sum_full,
                              double *restrict sum_both);
 
-/** Computes d_ij [entries], g_i = sum_j d_ij (e_j - e_i), from the arms. Local, no overlap. */
+/** Computes d_ij [entries], g_i = sum_j d_ij (e_j - e_i), from the arms. They may take the
+ * place of a column of arms. Local. */
 void wend_operator_slope(const wend_pairs *pairs, wend_slices slices,
-                         const wend_operator_source *source, float *const arm[3],
-                         float *restrict slope);
+                         const wend_operator_source *source, float *const arm[3], float *slope);
 
-/** Computes alpha_ij = A_ij.b_i/2 and beta_ij = A_ij.b_j/2 [entries]. Local, no overlap. */
+/** Computes alpha_ij = A_ij.b_i/2 and beta_ij = A_ij.b_j/2 [entries]. They may take the place
+ * of columns of areas. Local. */
 void wend_operator_along(const wend_pairs *pairs, wend_slices slices,
-                         const double (*restrict field)[3], float *const area[3],
-                         float *restrict alpha, float *restrict beta);
+                         const double (*restrict field)[3], float *const area[3], float *alpha,
+                         float *beta);
 
 /** Computes the three components of c_ij (grad e = sum_j c_ij (e_j - e_i)), [entries] each.
  * They may take the place of the arms. */

@@ -129,40 +129,37 @@ static bool any_open(const wend_domain *domain) {
   return domain->open[0] || domain->open[1] || domain->open[2];
 }
 
-/* Columns come and go in this order to keep the peak of memory low; gradients take the place of
- * arms, and the inverse matrices have served. */
+/* Columns take the place of those they are made of, to keep the peak of memory low: slopes or
+ * gradients that of arms, alpha and beta that of areas; the inverse matrices have served. */
 static wend_status build_pairs(wend_team *team, const wend_operator_source *source,
                                bool sharpen, wend_transport *t) {
   wend_geometry *g = t->geometry;
-  const int64_t entries = wend_neighbours_entries(&g->near);
+  wend_faces *faces = &g->faces;
   const wend_pairs *pairs = &g->near.pairs;
-  if (sharpen) t->mu = wend_allocate(team, entries, sizeof(float));
-  if (t->along) t->slope = wend_allocate(team, entries, sizeof(float));
+  if (sharpen) t->mu = wend_allocate(team, wend_neighbours_entries(&g->near), sizeof(float));
   const wend_status status = wend_agree(team);
   if (status != WEND_OK) return status;
   if (t->mu != NULL)
-    wend_sharpen_weights(pairs, g->near.all, &source->face, source->field, t->along,
-                         g->faces.arm, t->mu);
-  if (t->along)
-    wend_operator_slope(pairs, g->near.all, source, g->faces.arm, t->slope);
-  else
-    wend_operator_gradient(pairs, g->near.all, source, g->faces.arm, g->faces.arm);
-  for (int d = 0; d < 3; d++) {
-    if (t->along)
-      free(g->faces.arm[d]);
-    else
-      t->gradient[d] = g->faces.arm[d];
-    g->faces.arm[d] = NULL;
+    wend_sharpen_weights(pairs, g->near.all, &source->face, source->field, t->along, faces->arm,
+                         t->mu);
+  if (t->along) {
+    wend_operator_slope(pairs, g->near.all, source, faces->arm, faces->arm[0]);
+    wend_operator_along(pairs, g->near.all, source->field, faces->area, faces->area[0],
+                        faces->area[1]);
+    t->slope = faces->arm[0];
+    t->alpha = faces->area[0];
+    t->beta = faces->area[1];
+    faces->arm[0] = faces->area[0] = faces->area[1] = NULL;
+    wend_geometry_release_faces(g);
+  } else {
+    wend_operator_gradient(pairs, g->near.all, source, faces->arm, faces->arm);
+    for (int d = 0; d < 3; d++) {
+      t->gradient[d] = faces->arm[d];
+      faces->arm[d] = NULL;
+    }
   }
   free(g->inverse);
   g->inverse = NULL;
-  if (!t->along) return WEND_OK;
-  t->alpha = wend_allocate(team, entries, sizeof(float));
-  t->beta = wend_allocate(team, entries, sizeof(float));
-  const wend_status agreed = wend_agree(team);
-  if (agreed != WEND_OK) return agreed;
-  wend_operator_along(pairs, g->near.all, source->field, g->faces.area, t->alpha, t->beta);
-  wend_geometry_release_faces(g);
   return WEND_OK;
 }
 
