@@ -33,10 +33,14 @@ def clustered():
 
 
 def main():
-    rt.write("plane.h5", rt.blob(2, 30))
+    rt.write("plane.h5", rt.blob(2, 24))
     # along the field only, energy leaves through open borders, output times of both kinds
     compare("plane", "particles: plane.h5\noutput: {folder: FOLDER, name: x, every: 0.02 Myr, times: [0.03 Myr]}\n"
                      "time: {end: 0.05 Myr}\ndiffusion: {parallel: 3e28 cm^2/s}\n" + rt.box(2, "open"))
+    # streaming and its heat, in a closed box
+    compare("stream", "particles: plane.h5\noutput: {folder: FOLDER, name: x, every: 0.01 Myr}\n"
+                      "time: {end: 0.02 Myr}\ndiffusion: {parallel: 3e27 cm^2/s}\n"
+                      "streaming: {length: 50 pc}\n" + rt.box(2, "closed"))
     rt.write("solid.h5", clustered())
     # along and across, a power law and a record
     compare("solid", "particles: solid.h5\noutput: {folder: FOLDER, name: x, every: 0.003 Myr}\n"

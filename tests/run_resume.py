@@ -15,7 +15,7 @@ RESUMED = 5  # kills after which a checkpoint must have been there
 SEED = int.from_bytes(os.urandom(2), "big")
 # Three stages at most make many super-steps; accuracy, stages, outputs and bounds set their lengths.
 TEXT = ("particles: blob.h5\noutput: {folder: FOLDER, name: x, every: 0.05 Myr, checkpoint_every_steps: 6}\n"
-        "time: {end: 0.3 Myr}\ndiffusion: {parallel: 3e28 cm^2/s, perpendicular: 1e26 cm^2/s}\n"
+        "time: {end: 0.3 Myr}\ndiffusion: {parallel: 3e28 cm^2/s}\nstreaming: {length: 20 pc}\n"
         "stepping: {tolerance: 1e-5, stages: 3}\n" + rt.box(2, "open"))
 
 
@@ -92,7 +92,7 @@ def damage(setup):
 
 def main():
     print("seed", SEED)
-    rt.write("blob.h5", rt.blob(2, 72))
+    rt.write("blob.h5", rt.blob(2, 52))
     whole = rt.setup("whole.yaml", TEXT.replace("FOLDER", "whole"))
     killed = rt.setup("killed.yaml", TEXT.replace("FOLDER", "killed"))
     begin = time.monotonic()

@@ -109,6 +109,7 @@ def blob(dim, side, jitter=0.2, width=0.1, floor=1e-3, seed=1):
         "positionOffset": [0.0] * dim,
         "magneticField": field,
         "id": np.random.default_rng(seed + 1).permutation(10 * len(x))[: len(x)].astype("u8"),
+        "massDensity": 1e-25,  # thin: 3 uG make an Alfven speed of 0.87 kpc/Myr
         "cosmicRayEnergyDensity": density,
     }
 

@@ -33,6 +33,14 @@ static void choose_start(wend_team *team, wend_run *run, const wend_file_facts *
               setup->path, setup->particles);
 }
 
+static void check_streaming(wend_team *team, const wend_run *run) {
+  const wend_settings *settings = &run->setup.settings;
+  const bool streams = settings->streaming_length > 0 || settings->streaming_supports > 0;
+  if (streams && run->particles.column[WEND_DENSITY] == NULL)
+    wend_fail(team, WEND_ERR_FILE, "%s: streaming needs the record massDensity, which %s lacks",
+              run->setup.path, run->setup.particles);
+}
+
 /* A host's own volumes are better than an estimate: its energies and densities belong to them.
  */
 static void choose_volumes(wend_team *team, wend_run *run) {
@@ -61,6 +69,7 @@ wend_status wend_run_read_particles(wend_team *team, wend_run *run) {
     wend_fail(team, WEND_ERR_PARTICLES, "%s: species gas holds no particles", setup->particles);
   choose_domain(team, run, &facts);
   choose_start(team, run, &facts);
+  check_streaming(team, run);
   choose_volumes(team, run);
   WEND_TRY(wend_agree(team));
   WEND_TRY(wend_particle_file_place(team, setup->particles, &run->domain, &run->particles));

@@ -94,6 +94,9 @@ static void check_together(wend_setup_reader *reader) {
                     "%d is even: only odd numbers damp at the stability limit", stages);
   if (wend_setup_given(reader, "stepping.fixed") && wend_setup_given(reader, "stepping.first"))
     wend_setup_fail(reader, "stepping.first", "has no meaning beside stepping.fixed");
+  if (wend_setup_given(reader, "streaming.length") &&
+      wend_setup_given(reader, "streaming.supports"))
+    wend_setup_fail(reader, "streaming.supports", "has no meaning beside streaming.length");
 }
 
 /* Goes on to the next step as long as the ones before went well. Local. */
