@@ -145,6 +145,7 @@ SETUPS = [
     (changed(domain=None), ["domain", "good.h5", "no box"]),
     (changed(diffusion="{parallel: record}"), ["diffusion.parallel", "parallelDiffusivity", "good.h5"]),
     (changed(diffusion=POWER), ["diffusion.parallel", "massDensity", "good.h5"]),
+    (changed(units="{mass: 1e60 kg}"), ["units", "single precision", "Msun"]),
     (changed(streaming="{length: 50 pc}"), ["streaming", "massDensity", "good.h5"]),
     (changed(streaming="{length: 50 pc, supports: 2}"), ["line 6", "streaming.supports", "streaming.length"]),
     (changed(stepping="{stages: 4}"), ["line 6", "stepping.stages", "even"]),

@@ -3,6 +3,7 @@
 #include "cut.h"
 #include "laws.h"
 #include "run.h"
+#include <math.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -76,6 +77,25 @@ static void finish_energies(wend_run *run) {
   run->energy_is_density = false;
 }
 
+/* Coefficients and fluxes of pairs are kept in single precision. Units far from the particles'
+ * own leave its range: above it they are infinite, which shows, and below it they are 0, which
+ * would pass for more smearing. */
+static wend_status check_units(wend_team *team, const wend_run *run) {
+  const wend_transport *t = &run->transport;
+  const double highest = 1e36, lowest = 1e-20;
+  double flux = 0;
+  for (int32_t i = 0; i < run->particles.n; i++)
+    flux = fmax(flux, t->sum_full[i] * run->march.high);
+  wend_team_max(team, 1, &flux);
+  if (!(t->explicit_step > 0) || !(flux <= highest) || (flux > 0 && flux < lowest))
+    wend_fail(team, WEND_ERR_SETUP,
+              "%s: units: with these, coefficients of the exchange leave the range of single "
+              "precision: choose units of length, time and mass nearer to the particles' own, "
+              "for example kpc, Myr and Msun",
+              run->setup.path);
+  return wend_agree(team);
+}
+
 wend_status wend_run_build(wend_team *team, wend_run *run) {
   wend_status status;
   const wend_settings *settings = &run->setup.settings;
@@ -87,6 +107,7 @@ wend_status wend_run_build(wend_team *team, wend_run *run) {
   wend_laws_drop_constant(&run->setup, &run->particles);
   WEND_TRY(wend_march_init(team, settings, &run->transport, run->particles.column[WEND_ENERGY],
                            run->start, &run->march));
+  WEND_TRY(check_units(team, run));
 done:
   return status;
 }
