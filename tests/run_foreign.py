@@ -82,6 +82,19 @@ def check_start(ids, places, density):
     rt.check(abs(rows["time"][-1] - (1 + TIME)) < 1e-12, f"the last time is {rows['time'][-1]}")
 
 
+def check_origin(last):
+    """What a reader needs to know where a file comes from."""
+    with open(rt.path("foreign.yaml"), "rb") as setup, h5py.File(rt.path(f"out/{last}"), "r") as f:
+        rt.check(f["wend/setup"][0] == setup.read(), "the setup's text is not in the output")
+        rt.check(f["wend"].attrs["version"] and f["wend"].attrs["git"], "no version in the output")
+    with open(rt.path("out/x_run.log")) as log, open(rt.path("out/x_report.txt")) as report:
+        words, table = log.read(), report.read()
+    for word in ("wend: ", "setup hash", "foreign.h5", "ranks: 2", "HDF5: ", "MPI: "):
+        rt.check(word in words, f"no {word!r} in the log: {words}")
+    for word in ("closure", "super-steps", "kB a particle", "numerical", "fell back", "limiter"):
+        rt.check(word in table, f"no {word!r} in the report: {table}")
+
+
 def check_physics(last):
     _, x, y, energy, volume = by_id(f"out/{last}", "position/x", "position/y", "cosmicRayEnergy", "volume")
     off = np.array([x, y]) / rt.KPC - FAR
@@ -105,6 +118,7 @@ def main():
     rt.run(2, rt.setup("foreign.yaml", TEXT.replace("INPUT", "foreign.h5").replace("FOLDER", "out")), "--quiet")
     last = rt.outputs("out", "x")[-1]
     check_start(ids, places, density)
+    check_origin(last)
     check_physics(last)
     # the same particles in a file that wend wrote
     rt.run(1, rt.setup("own.yaml", TEXT.replace("INPUT", "out/x_000000.h5").replace("FOLDER", "own")), "--quiet")

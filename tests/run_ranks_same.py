@@ -32,11 +32,23 @@ def clustered():
     return records
 
 
+def check_times(where, expected):
+    """Outputs come at the times asked for, to the last digits of a double in Myr."""
+    found = []
+    for name in rt.outputs(where, "x"):
+        with rt.h5py.File(rt.path(f"{where}/{name}"), "r") as f:
+            step = next(iter(f["data"].values()))
+            found.append(step.attrs["time"] * step.attrs["timeUnitSI"] / rt.MYR)
+    good = len(found) == len(expected) and max(abs(a - b) for a, b in zip(found, expected)) < 1e-15
+    rt.check(good, f"output times {found} for {expected}")
+
+
 def main():
     rt.write("plane.h5", rt.blob(2, 24))
     # along the field only, energy leaves through open borders, output times of both kinds
     compare("plane", "particles: plane.h5\noutput: {folder: FOLDER, name: x, every: 0.02 Myr, times: [0.03 Myr]}\n"
                      "time: {end: 0.05 Myr}\ndiffusion: {parallel: 3e28 cm^2/s}\n" + rt.box(2, "open"))
+    check_times("plane1", [0, 0.02, 0.03, 0.04, 0.05])
     # streaming and its heat, in a closed box
     compare("stream", "particles: plane.h5\noutput: {folder: FOLDER, name: x, every: 0.01 Myr}\n"
                       "time: {end: 0.02 Myr}\ndiffusion: {parallel: 3e27 cm^2/s}\n"
