@@ -145,8 +145,12 @@ check_symbols() {
   [ -n "${builddir:-}" ] || return 0
   for object in "$builddir"/{kernels,src,src/io,src/scenes,src/draw,src/mesh,src/cli}/.libs/*.o; do
     ${NM:-nm} -g --defined-only "$object" | awk -v object="${object#"$builddir"/}" '
-      $3 !~ /^wend_/ { print object ": symbol " $3 " does not start with wend_" }'
+      $3 !~ /^wend_|\.resolver$/ { print object ": symbol " $3 " does not start with wend_" }'
   done
+  # clang makes what chooses among the variants of a static function a weak symbol: two static
+  # functions of one name, in two files, would share it.
+  ${NM:-nm} -g --defined-only "$builddir"/{kernels,src,src/io}/.libs/*.o | awk '
+    $3 ~ /\.resolver$/ && seen[$3]++ { print $3 ": in two files: give one function another name" }'
   for object in "$builddir"/{kernels,src,src/io}/.libs/*.o; do
     objdump -t "$object" | awk -v object="${object#"$builddir"/}" '
       / O (\.data|\.bss|\.tdata|\.tbss)\t/ { print object ": variable " $NF ": no globals" }'
