@@ -85,17 +85,41 @@ static const char *const names[WEND_COLUMNS] = {
     "vy",       "vz",   "mass",  "density", "support",   "volume", "energy",
     "internal", "kpar", "kperp", "ionised", "electrons", "source"};
 
-static void print_rows(const wend_particles *p) {
+/* The particles of this rank as text, to be freed. */
+static char *rows_text(const wend_particles *p, int *length) {
+  char *text = NULL;
+  size_t size = 0;
+  FILE *out = open_memstream(&text, &size);
   for (int32_t i = 0; i < p->n; i++) {
-    printf("%" PRIu64, p->id[i]);
+    fprintf(out, "%" PRIu64, p->id[i]);
     for (int c = 0; c < WEND_COLUMNS; c++)
-      if (p->column[c] != NULL) printf(" %s=%a", names[c], p->column[c][i]);
-    printf("\n");
+      if (p->column[c] != NULL) fprintf(out, " %s=%a", names[c], p->column[c][i]);
+    fprintf(out, "\n");
   }
-  fflush(stdout);
+  fclose(out);
+  *length = (int)size;
+  return text;
 }
 
-/* Ranks print one after the other. */
+/* Rank 0 prints for all: a launcher mixes what several ranks print, whatever their order. */
+static void print_rows(const wend_particles *p) {
+  enum { TAG = 1 };
+  int length;
+  char *text = rows_text(p, &length);
+  if (team.rank > 0) MPI_Send(text, length, MPI_CHAR, 0, TAG, MPI_COMM_WORLD);
+  for (int r = 0; r < team.size && team.rank == 0; r++) {
+    if (r > 0) {
+      MPI_Status sent;
+      MPI_Probe(r, TAG, MPI_COMM_WORLD, &sent);
+      MPI_Get_count(&sent, MPI_CHAR, &length);
+      text = realloc(text, (size_t)length + 1);
+      MPI_Recv(text, length, MPI_CHAR, r, TAG, MPI_COMM_WORLD, MPI_STATUS_IGNORE);
+    }
+    fwrite(text, 1, (size_t)length, stdout);
+  }
+  free(text);
+}
+
 static wend_status read_file(const char *path, int64_t iteration) {
   const wend_units si = {1, 1, 1};
   wend_particles p;
@@ -112,10 +136,7 @@ static wend_status read_file(const char *path, int64_t iteration) {
              wend_boundary_name(wend_box_boundary(&facts.domain, a)));
     printf("\n");
   }
-  for (int r = 0; r < team.size; r++) {
-    if (r == team.rank) print_rows(&p);
-    MPI_Barrier(MPI_COMM_WORLD);
-  }
+  print_rows(&p);
   wend_particles_reset(&p);
   return status;
 }
